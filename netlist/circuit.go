@@ -89,7 +89,19 @@ type Expectation struct {
 	Label string
 	Text  string // as written, formatted, without "expect" and the label
 	Span  syntax.Span
+	Unit  string // SI unit of the quantity, as written in the language; "" for a number
+	Ratio bool   // a limit is written in dB: people see value, limits and margin in dB
+	Word  string // the wanted word, if the quantity is one
 }
+
+// The kinds of elements that are no family's devices.
+const (
+	KindResistor      = "resistor"
+	KindCapacitor     = "capacitor"
+	KindInductor      = "inductor"
+	KindVoltageSource = "voltage source"
+	KindCurrentSource = "current source"
+)
 
 // Setup is a bench at one point of its grid.
 type Setup struct {

@@ -30,6 +30,8 @@ type Design struct {
 //	(*Design).Circuit() (*Circuit, error)                            the file as written, no bench
 //	(*Design).Bench(name string) *Bench                              nil if there is none
 //	(*Bench).Setup(point []float64) (*Setup, error)                  point: one value for each Vary, SI
+//	(*Design).Setup() (*Setup, error)                                the circuit as written as a set-up without expectations
+//	(*Setup).Quantity(text string) (Quantity, error)                 resolves one quantity written in the language for this set-up (the command's --quantity)
 //	(*Design).Families() []devices.Family
 //	Format(name, src string) (string, error)
 //	Metrics(), Reducers()                                            catalogue of names, meanings, dimensions

@@ -107,4 +107,5 @@ type Limit struct {
 	Low, High         float64 // SI; -Inf or +Inf on an open side
 	LowOpen, HighOpen bool    // the limit itself does not hold (> and <)
 	Word              string  // wanted word, "" if numbers
+	Ratio             bool    // a limit was written in dB: people see the value in dB
 }
