@@ -107,7 +107,7 @@ func (m *model) hold(b *mna.Builder) error {
 		if node <= 0 {
 			continue
 		}
-		signal, err := devices.Scaled(e.Signal, sense)
+		signal := devices.Scaled(e.Signal, sense)
 		if err != nil {
 			return err
 		}

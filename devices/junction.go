@@ -1,0 +1,151 @@
+package devices
+
+import "math"
+
+// exponentLimit is the exponent above which the exponential goes on linearly, with its value and slope there.
+const exponentLimit = 80
+
+var limitExp = math.Exp(exponentLimit)
+
+// expLinear returns exp(x), continued linearly above exponentLimit, and its derivative.
+func expLinear(x float64) (value, slope float64) {
+	if x > exponentLimit {
+		return limitExp * (1 + x - exponentLimit), limitExp
+	}
+	value = math.Exp(x)
+	return value, value
+}
+
+// exponential is a current i = is (exp(v/nVt) - 1).
+type exponential struct {
+	is      float64 // A
+	nVt     float64 // V
+	inverse float64 // 1/V
+	gain    float64 // is/nVt, S
+	knee    float64 // V, where the current's curvature makes Newton's method overshoot
+}
+
+func newExponential(is, nVt float64) exponential {
+	return exponential{is: is, nVt: nVt, inverse: 1 / nVt, gain: is / nVt, knee: nVt * math.Log(nVt/(math.Sqrt2*is))}
+}
+
+// at returns the current in A and its slope in S at v volts.
+func (x *exponential) at(v float64) (i, g float64) {
+	if x.is == 0 {
+		return 0, 0
+	}
+	value, slope := expLinear(v * x.inverse)
+	return x.is * (value - 1), x.gain * slope
+}
+
+// limitedSteps is the length, in units of nVt, of a step upwards that is always allowed.
+const limitedSteps = 2
+
+// limit shortens a step upwards from the junction voltage last to v where the exponential is steep: the step in voltage
+// becomes the one that the linearised junction would make in current, v' = last + nVt ln(1 + (v - last)/nVt), as if
+// the iteration were on the current. (Iterating on whichever of current and voltage changes less:
+// Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.)
+func (x *exponential) limit(v, last float64) (float64, bool) {
+	base := max(last, x.knee)
+	if !(v > base+limitedSteps*x.nVt) {
+		return v, false
+	}
+	return base + x.nVt*(limitedSteps+math.Log1p((v-base)*x.inverse-limitedSteps)), true
+}
+
+// depletion is the charge of a junction's depletion layer.
+type depletion struct {
+	c     float64 // F at 0 V
+	phi   float64 // V
+	grade float64
+	knee  float64 // V: above it the capacitance goes on along its tangent
+	// of the tangent
+	kneeCharge, kneeCap, kneeSlope float64
+	kind                           depletionKind
+}
+
+type depletionKind uint8
+
+const (
+	noDepletion depletionKind = iota
+	constantDepletion
+	rootDepletion // grading 1/2
+	anyDepletion
+)
+
+func newDepletion(c, phi, grade, fcap float64) depletion {
+	d := depletion{c: c, phi: phi, grade: grade, kind: anyDepletion}
+	switch {
+	case c == 0:
+		d.kind = noDepletion
+		return d
+	case grade == 0:
+		d.kind = constantDepletion
+		return d
+	case grade == 0.5:
+		d.kind = rootDepletion
+	}
+	d.knee = fcap * phi
+	d.kneeCharge, d.kneeCap = d.below(d.knee)
+	d.kneeSlope = d.kneeCap * grade / (phi * (1 - fcap))
+	return d
+}
+
+// below returns charge and capacitance below the knee.
+func (d *depletion) below(v float64) (q, c float64) {
+	room := 1 - v/d.phi
+	if d.kind == rootDepletion {
+		root := math.Sqrt(room)
+		return 2 * d.c * d.phi * (1 - root), d.c / root
+	}
+	c = d.c * math.Exp(-d.grade*math.Log(room))
+	return d.phi / (1 - d.grade) * (d.c - c*room), c
+}
+
+// at returns the charge in C and the capacitance in F at v volts.
+func (d *depletion) at(v float64) (q, c float64) {
+	switch {
+	case d.kind == noDepletion:
+		return 0, 0
+	case d.kind == constantDepletion:
+		return d.c * v, d.c
+	case v < d.knee:
+		return d.below(v)
+	}
+	x := v - d.knee
+	return d.kneeCharge + x*(d.kneeCap+x*d.kneeSlope/2), d.kneeCap + x*d.kneeSlope
+}
+
+// thermal holds the temperatures of a device and the laws that scale its parameters.
+type thermal struct {
+	t, t0 float64 // K: the device's own, and that at which its parameters hold
+	vt    float64 // V at t
+	ratio float64 // t/t0
+}
+
+func newThermal(t, t0 float64) thermal {
+	return thermal{t: t, t0: t0, vt: ThermalVoltage(t), ratio: t / t0}
+}
+
+// saturation scales a saturation current: r^exponent exp(gap (r-1)/V_T), with the gap in V.
+func (h thermal) saturation(exponent, gap float64) float64 {
+	return math.Pow(h.ratio, exponent) * math.Exp(gap*(h.ratio-1)/h.vt)
+}
+
+// gap is the band gap of silicon in V: Varshni's form, constants after Thurmond, J. Electrochem. Soc. 122, 1975.
+func gap(t float64) float64 { return 1.16 - 7.02e-4*t*t/(t+1108) }
+
+// potential scales a built-in potential.
+func (h thermal) potential(phi float64) float64 {
+	return phi*h.ratio - 3*h.vt*math.Log(h.ratio) - gap(h.t0)*h.ratio + gap(h.t)
+}
+
+// capacitance scales a depletion capacitance of grading m and built-in potential phi.
+func (h thermal) capacitance(c, m, phi float64) float64 {
+	return c * (1 + m*(4e-4*(h.t-h.t0)-(h.potential(phi)-phi)/phi))
+}
+
+// depletion makes a scaled depletion layer, a times as large.
+func (h thermal) depletion(c, phi, m, fcap, a float64) depletion {
+	return newDepletion(a*h.capacitance(c, m, phi), h.potential(phi), m, fcap)
+}
