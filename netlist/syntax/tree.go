@@ -279,13 +279,13 @@ type Element struct {
 type Operator uint8
 
 const (
-	AtLeast  Operator = iota // >= value
-	Above                    // >  value
-	AtMost                   // <= value
-	Below                    // <  value
-	Within                   // within a..b
-	Near                     // = v +- tolerance
-	Equal                    // = word or value without a tolerance (words only, the resolver says)
+	AtLeast Operator = iota // >= value
+	Above                   // >  value
+	AtMost                  // <= value
+	Below                   // <  value
+	Within                  // within a..b
+	Near                    // = v +- tolerance
+	Equal                   // = word or value without a tolerance (words only, the resolver says)
 )
 
 // Comparison is the right side of an expectation.

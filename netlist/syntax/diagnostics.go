@@ -1,0 +1,160 @@
+package syntax
+
+import (
+	"fmt"
+	"sort"
+	"strings"
+	"unicode/utf8"
+)
+
+// Error returns the diagnostic in one line: file:line:column: message.
+func (d *Diagnostic) Error() string {
+	s := d.Message
+	if d.Span.Start.Line > 0 {
+		s = fmt.Sprintf("%s:%d:%d: %s", d.Span.File, d.Span.Start.Line, d.Span.Start.Column, d.Message)
+	} else if d.Span.File != "" {
+		s = d.Span.File + ": " + d.Message
+	}
+	return s
+}
+
+// Excerpt returns the source line with the span marked under it, the note and the hint; empty without a place.
+func (d *Diagnostic) Excerpt() string {
+	var b strings.Builder
+	if d.Span.Start.Line > 0 {
+		number := fmt.Sprintf("%5d | ", d.Span.Start.Line)
+		line := strings.TrimRight(strings.ReplaceAll(d.Line, "\t", " "), "\r")
+		const widest = 160 // columns of a source line that are shown
+		if utf8.RuneCountInString(line) > widest {
+			line = string([]rune(line)[:widest])
+		}
+		fmt.Fprintf(&b, "%s%s\n", number, line)
+		width := 1
+		if d.Span.End.Line == d.Span.Start.Line {
+			width = max(1, d.Span.End.Column-d.Span.Start.Column)
+		}
+		width = min(width, max(1, utf8.RuneCountInString(line)+1-d.Span.Start.Column))
+		if d.Span.Start.Column <= widest {
+			fmt.Fprintf(&b, "%s| %s%s", strings.Repeat(" ", len(number)-2), strings.Repeat(" ", d.Span.Start.Column-1), strings.Repeat("^", width))
+			if d.Note != "" {
+				b.WriteString(" " + d.Note)
+			}
+			b.WriteString("\n")
+		}
+	}
+	if d.Hint != "" {
+		fmt.Fprintf(&b, "      = %s\n", d.Hint)
+	}
+	return b.String()
+}
+
+// DiagnosticList is what is wrong with a file, in source order.
+type DiagnosticList []*Diagnostic
+
+// listedMost is the number of diagnostics that Error spells out.
+const listedMost = 30
+
+// Error returns every diagnostic with its excerpt, and how many more there are.
+func (l DiagnosticList) Error() string {
+	var b strings.Builder
+	for i, d := range l {
+		if i == listedMost {
+			fmt.Fprintf(&b, "(and %d more)\n", len(l)-i)
+			break
+		}
+		b.WriteString(d.Error() + "\n" + d.Excerpt())
+	}
+	return strings.TrimRight(b.String(), "\n")
+}
+
+// Unwrap lets errors.As find a single *Diagnostic.
+func (l DiagnosticList) Unwrap() []error {
+	errs := make([]error, len(l))
+	for i, d := range l {
+		errs[i] = d
+	}
+	return errs
+}
+
+// Sort orders the list by file and place and drops what is said twice.
+func (l DiagnosticList) Sort() DiagnosticList {
+	sort.SliceStable(l, func(i, j int) bool {
+		a, b := l[i].Span, l[j].Span
+		if a.File != b.File {
+			return a.File < b.File
+		}
+		if a.Start.Offset != b.Start.Offset {
+			return a.Start.Offset < b.Start.Offset
+		}
+		return l[i].Message < l[j].Message
+	})
+	out := l[:0]
+	for i, d := range l {
+		if i == 0 || d.Error() != l[i-1].Error() {
+			out = append(out, d)
+		}
+	}
+	return out
+}
+
+// Errors returns those that are no warnings.
+func (l DiagnosticList) Errors() DiagnosticList { return l.only(Error) }
+
+// Warnings returns the warnings.
+func (l DiagnosticList) Warnings() DiagnosticList { return l.only(Warning) }
+
+func (l DiagnosticList) only(s Severity) DiagnosticList {
+	var out DiagnosticList
+	for _, d := range l {
+		if d.Severity == s {
+			out = append(out, d)
+		}
+	}
+	return out
+}
+
+// Err returns the errors of the list as an error, nil if there are none.
+func (l DiagnosticList) Err() error {
+	if e := l.Errors(); len(e) > 0 {
+		return e
+	}
+	return nil
+}
+
+// Nearest returns the candidate nearest to name in edits, if it is near enough to be meant.
+func Nearest(name string, candidates []string) (string, bool) {
+	best, distance := "", 1+len(name)/3
+	for _, c := range candidates {
+		if d := edits(strings.ToLower(name), strings.ToLower(c), distance); d <= distance && c != name && (best == "" || d < distance) {
+			best, distance = c, d
+		}
+	}
+	return best, best != ""
+}
+
+// edits is the optimal string alignment distance of two words (insertions, deletions, substitutions, swaps of
+// neighbours), or more than most.
+func edits(a, b string, most int) int {
+	if len(a)-len(b) > most || len(b)-len(a) > most {
+		return most + 1
+	}
+	before, last, row := make([]int, len(b)+1), make([]int, len(b)+1), make([]int, len(b)+1)
+	for j := range last {
+		last[j] = j
+	}
+	for i := 1; i <= len(a); i++ {
+		row[0] = i
+		for j := 1; j <= len(b); j++ {
+			cost := 1
+			if a[i-1] == b[j-1] {
+				cost = 0
+			}
+			row[j] = min(last[j]+1, row[j-1]+1, last[j-1]+cost)
+			if i > 1 && j > 1 && a[i-1] == b[j-2] && a[i-2] == b[j-1] {
+				row[j] = min(row[j], before[j-2]+1)
+			}
+		}
+		before, last, row = last, row, before
+	}
+	return last[len(b)]
+}

@@ -1,0 +1,78 @@
+package unit
+
+import (
+	"math"
+	"strconv"
+	"strings"
+)
+
+// ShownDigits is the number of significant digits that people are shown.
+const ShownDigits = 4
+
+// Show writes a value for people: 4.49 V, 38.7 kohm, -12.3 uA, 0.997. NaN and infinities are written as words.
+func Show(si float64, d Dimension) string { return ShowDigits(si, d, ShownDigits) }
+
+// ShowDigits writes a value with a number of significant digits.
+func ShowDigits(si float64, d Dimension, digits int) string {
+	symbol := d.Symbol()
+	if d == Temperature {
+		return Trim(si, digits) + " K"
+	}
+	if symbol == "" {
+		return showNumber(si, digits)
+	}
+	if !prefixable(symbol) {
+		return showNumber(si, digits) + " " + symbol
+	}
+	if si == 0 || math.IsNaN(si) || math.IsInf(si, 0) {
+		return showNumber(si, digits) + " " + symbol
+	}
+	rounded := round(si, digits)
+	exponent := int(math.Floor(math.Log10(math.Abs(rounded))/3+1e-12)) * 3
+	exponent = max(-15, min(12, exponent))
+	if exponent == 0 {
+		return Trim(rounded, digits) + " " + symbol
+	}
+	return Trim(rounded*math.Pow(10, float64(-exponent)), digits) + " " + prefixNames[exponent] + symbol
+}
+
+var prefixNames = map[int]string{-15: "f", -12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
+
+// prefixable reports whether a prefix may stand before the symbol.
+func prefixable(symbol string) bool {
+	head, _, _ := strings.Cut(symbol, "/")
+	s, ok := lookUp(head)
+	return ok && s.prefixes
+}
+
+func round(x float64, digits int) float64 {
+	y, err := strconv.ParseFloat(strconv.FormatFloat(x, 'e', digits-1, 64), 64)
+	if err != nil {
+		return x
+	}
+	return y
+}
+
+// Trim writes a number with a number of significant digits and no trailing zeros.
+func Trim(x float64, digits int) string {
+	switch {
+	case math.IsNaN(x):
+		return "not a number"
+	case math.IsInf(x, 1):
+		return "infinite"
+	case math.IsInf(x, -1):
+		return "-infinite"
+	}
+	return strconv.FormatFloat(round(x, digits), 'g', -1, 64)
+}
+
+func showNumber(x float64, digits int) string { return Trim(x, digits) }
+
+// ShowRatio writes a ratio in dB: 20 log10 |x|.
+func ShowRatio(x float64) string {
+	db := 20 * math.Log10(math.Abs(x))
+	if math.IsNaN(db) || math.IsInf(db, 0) {
+		return Trim(db, ShownDigits) + " dB"
+	}
+	return strconv.FormatFloat(db, 'f', 2, 64) + " dB"
+}
