@@ -3,144 +3,140 @@ package mna
 import (
 	"fmt"
 	"math"
-	"sort"
-	"strings"
-
-	"errors"
-
-	"poise/mna/sparse"
 )
 
-// rounding is how far the sum of a node's currents may miss zero beyond balanceShare when the voltages themselves are
-// rounded: a conductance g sees g times the last bit of its voltage.
-const rounding = 8 * 0x1p-52
+const (
+	// balanceShare bounds the sum of the currents of a node against the sum of their magnitudes in an accepted answer.
+	balanceShare = 1e-12
+	// rounding is how far rounding of the unknowns may move a current: each is the product of a derivative and an unknown
+	// that is known to half of its last bit, and the sum rounds once more for every term.
+	rounding = 4 * 0x1p-52
+	// polishIterations may follow where Newton's method has settled but the currents do not balance yet.
+	polishIterations = 4
+)
 
-// accept checks the untouched equations at the solution: at every node the sum of the currents against the
-// sum of their magnitudes, as rounding of the unknowns allows.
+// balanceError says that Newton's method settled where the equations do not hold.
+type balanceError struct {
+	unknown      string
+	left, around float64
+}
+
+func (e *balanceError) Error() string {
+	return fmt.Sprintf("%s does not balance: %g of %g is left", e.unknown, e.left, e.around)
+}
+
+// accept checks the untouched equations at the solution in the workspace: at every node the sum of the currents against the sum of
+// their magnitudes, and that the equations determine every unknown.
 func (c *climb) accept() error {
-	w, e := c.w, &c.w.eval
-	e.Limit = false
-	w.evaluate(c.problem())
-	sum := append([]float64(nil), e.F...)
-	size := make([]float64, len(sum))
-	for _, s := range c.s.stamps {
-		clear(e.F)
-		s.Eval(e)
-		for i, f := range e.F {
-			size[i] += math.Abs(f)
+	w := c.w
+	var err error
+	for range polishIterations {
+		w.eval.Limit = false
+		w.evaluate(&c.base)
+		w.assemble(&c.base)
+		if err := w.factor(); err != nil {
+			return err
 		}
-	}
-	for k := range c.s.rows {
-		if row, col := c.s.rows[k], c.s.cols[k]; row > 0 && col > 0 {
-			size[row] += rounding / balanceShare * math.Abs(e.G[k]*e.X[col]) / 8
+		if err = c.balance(); err == nil {
+			return w.determined()
 		}
+		w.solve()
+		if !w.apply(1).finite {
+			return errDiverged
+		}
+		c.iterations++
 	}
-	for i := c.s.first(); i < len(sum); i++ {
-		if !(math.Abs(sum[i]) <= balanceShare*size[i]+math.SmallestNonzeroFloat64) {
-			return fmt.Errorf("%s does not balance: %g of %g is left", c.s.names[i], sum[i], size[i])
+	return err
+}
+
+// balance compares the residual of every row with the magnitudes of its terms.
+func (c *climb) balance() error {
+	w := c.w
+	size := c.magnitudes()
+	for i := c.s.first(); i < len(size); i++ {
+		if !(math.Abs(w.residual[i]) <= size[i]+math.SmallestNonzeroFloat64) {
+			return &balanceError{c.s.names[i], w.residual[i], size[i]}
 		}
 	}
 	return nil
 }
 
-// NoConvergenceError says that no method found a bias point.
-type NoConvergenceError struct {
-	Iterations int
-	Worst      []Resistance // the unknowns that resist most, worst first
-	Reason     error
-}
-
-// Resistance is an unknown whose equation does not balance.
-type Resistance struct {
-	Unknown  string
-	Residual float64 // A or V
-	Devices  []string
-}
-
-func (e *NoConvergenceError) Error() string {
-	var b strings.Builder
-	fmt.Fprintf(&b, "no bias point found after %d iterations", e.Iterations)
-	for i, r := range e.Worst {
-		if i == 0 {
-			b.WriteString("; what resists most: ")
-		} else {
-			b.WriteString(", ")
+// magnitudes evaluates each device alone and returns, for every row, how much of its terms may be left over. It leaves eval with
+// one device's terms.
+func (c *climb) magnitudes() []float64 {
+	w, e := c.w, &c.w.eval
+	size := make([]float64, len(e.F))
+	for k, j := range w.jacobian {
+		if row, col := c.s.rows[k], c.s.cols[k]; row > 0 && col > 0 {
+			size[row] += rounding * math.Abs(j*e.X[col])
 		}
-		fmt.Fprintf(&b, "%s (off by %.3g, at %s)", r.Unknown, r.Residual, strings.Join(r.Devices, " "))
 	}
-	return b.String()
-}
-
-func (e *NoConvergenceError) Unwrap() error { return e.Reason }
-
-// worstShown is the number of unknowns that an error names.
-const worstShown = 3
-
-// explain names the unknowns that resist at the last point.
-func (c *climb) explain(reason error) error {
-	w := c.w
-	w.eval.Limit = false
-	w.evaluate(c.problem())
-	e := &NoConvergenceError{Iterations: c.iterations, Reason: reason}
-	order := make([]int, 0, len(w.eval.F))
-	for i := c.s.first(); i < len(w.eval.F); i++ {
-		order = append(order, i)
-	}
-	sort.SliceStable(order, func(a, b int) bool {
-		return math.Abs(w.eval.F[order[a]]) > math.Abs(w.eval.F[order[b]])
-	})
-	for _, i := range order[:min(worstShown, len(order))] {
-		e.Worst = append(e.Worst, Resistance{c.s.names[i], w.eval.F[i], c.s.touching(Unknown(i))})
-	}
-	return e
-}
-
-// touching names the devices connected to an unknown.
-func (s *System) touching(u Unknown) []string {
-	var names []string
-	for i := range s.devices {
-		pins, internals := s.Unknowns(i)
-		for _, p := range append(pins, internals...) {
-			if p == u {
-				names = append(names, s.devices[i].name)
-				break
+	clear(e.F)
+	clear(e.Q)
+	for i, s := range c.s.stamps {
+		s.Eval(e)
+		for _, u := range c.s.rowsOf(i) {
+			term := math.Abs(e.F[u])
+			if c.base.alpha != 0 {
+				term += math.Abs(c.base.alpha * e.Q[u])
 			}
+			size[u] += balanceShare * term
+			e.F[u], e.Q[u] = 0, 0
 		}
 	}
-	return names
-}
-
-// SingularError says that the equations have no unique solution.
-type SingularError struct {
-	Unknowns []string // that are not determined
-	Devices  []string // that touch them
-	// Structural: no values of the parts could help. Otherwise it is these values that do not.
-	Structural bool
-}
-
-func (e *SingularError) Error() string {
-	why := "with these values"
-	if e.Structural {
-		why = "whatever the values"
+	for i, v := range c.base.constant {
+		size[i] += balanceShare * math.Abs(v)
 	}
-	return fmt.Sprintf("nothing determines %s (at %s), %s", strings.Join(e.Unknowns, ", "), strings.Join(e.Devices, " "), why)
+	return size
 }
 
-// explain turns an error of the factorisation into the user's names.
-func (s *System) explain(err error) error {
-	var structural *sparse.StructuralError
-	var numerical *sparse.SingularError
-	switch {
-	case errors.As(err, &structural):
-		e := &SingularError{Structural: true}
-		for _, j := range structural.Columns {
-			e.Unknowns = append(e.Unknowns, s.names[j+s.first()])
-			e.Devices = append(e.Devices, s.touching(Unknown(j+s.first()))...)
+// undetermined is the factor by which a disturbance of the equations in their last bits may grow to no more than the size of the
+// unknowns: beyond it they are singular as far as numbers can tell.
+const undetermined = 1e14
+
+// determined checks on the last factors that no combination of the unknowns is free: that a disturbance of every equation, of the size of its
+// largest coefficient and of mixed signs, does not move any unknown beyond bounds.
+func (w *workspace) determined() error {
+	s := w.sys
+	first := s.first()
+	scale := w.rowScale()
+	for i := range w.update {
+		w.update[i] = mixedSign(i) * scale[first+i]
+	}
+	w.lu.Solve(w.update)
+	w.work.Solves++
+	for _, v := range w.update {
+		if !(math.Abs(v) <= undetermined) {
+			return w.undetermined()
 		}
-		return e
-	case errors.As(err, &numerical):
-		u := numerical.Column + s.first()
-		return &SingularError{Unknowns: []string{s.names[u]}, Devices: s.touching(Unknown(u))}
 	}
-	return err
+	return nil
+}
+
+// rowScale returns the largest coefficient of every row, 1 for an empty one.
+func (w *workspace) rowScale() []float64 {
+	scale := make([]float64, len(w.residual))
+	first := int32(w.sys.first())
+	for k, j := range w.jacobian {
+		if w.sys.cols[k] >= first {
+			row := w.sys.rows[k]
+			scale[row] = max(scale[row], math.Abs(j))
+		}
+	}
+	for i, v := range scale {
+		if v == 0 {
+			scale[i] = 1
+		}
+	}
+	return scale
+}
+
+// mixedSign returns numbers between 1/2 and 1 of irregular sign, the same in every run.
+func mixedSign(i int) float64 {
+	const golden = 0.6180339887498949
+	_, v := math.Modf(float64(i+1) * golden)
+	if v < 0.5 {
+		return v - 1
+	}
+	return v
 }

@@ -10,7 +10,7 @@ import (
 // BiasOptions say how to find a bias point. The zero value is ready.
 type BiasOptions struct {
 	Time   float64      // s; signals have their value at this time
-	Guess  []float64    // all unknowns, nil: zero
+	Guess  []float64    // all unknowns, as in [Bias.X]; nil: zero
 	Logger *slog.Logger // nil: silent
 }
 
@@ -25,68 +25,161 @@ type Bias struct {
 // The methods that look for a bias point, in the order in which they are tried.
 const (
 	RungNewton  = "newton"
+	RungDamped  = "damped newton"
 	RungPseudo  = "pseudo-transient"
 	RungSources = "source stepping"
 	RungShunts  = "shunt stepping"
 )
 
-var (
-	errDiverged = errors.New("the iteration diverged")
-	errSlow     = errors.New("the iteration did not settle")
-)
-
 // Bias finds a point at which the currents of every node balance: Newton's method with junction limiting and, if
-// that fails, a ladder of continuations. Whatever helped on the way is gone from the equations of the answer.
+// that fails, a ladder of line search and continuations. Whatever helped on the way is gone from the equations of the answer:
+// it is accepted only if the sum of the currents of every node is below 1e-12 of the sum of their magnitudes, as far as rounding allows, and
+// if the equations determine every unknown.
 //
-// It returns *SingularError, *NoConvergenceError or the context's error.
+// It returns *OptionError, *SingularError, *NoConvergenceError or the context's error.
 func (s *System) Bias(ctx context.Context, o BiasOptions) (*Bias, error) {
-	if s.analysis == nil {
-		return nil, s.singular
+	if o.Guess != nil && len(o.Guess) != len(s.names) {
+		return nil, &OptionError{"Guess", "as many values as the system has unknowns"}
 	}
-	log := o.Logger
-	if log == nil {
-		log = slog.New(slog.DiscardHandler)
+	if math.IsNaN(o.Time) || math.IsInf(o.Time, 0) {
+		return nil, &OptionError{"Time", "a finite time"}
 	}
-	c := &climb{ctx: ctx, s: s, w: s.newWorkspace(), o: o}
-	rungs := []struct {
-		name string
-		run  func() error
-	}{{RungNewton, c.plain}, {RungPseudo, c.pseudo}, {RungSources, c.sources}, {RungShunts, c.shunts}}
-	var last error
-	for _, r := range rungs {
-		err := r.run()
-		if ctx.Err() != nil {
-			return nil, ctx.Err()
-		}
-		if err == nil {
-			if err = c.accept(); err == nil {
-				log.Debug("bias found", "rung", r.name, "iterations", c.iterations)
-				return &Bias{X: append([]float64(nil), c.w.eval.X...), Rung: r.name, Iterations: c.iterations, Work: c.w.work}, nil
-			}
-		}
-		log.Debug("bias rung failed", "rung", r.name, "reason", err)
-		last = err
+	c := s.newClimb(ctx, s.newWorkspace(), problem{time: o.Time, drive: 1}, o.Logger)
+	if o.Guess != nil {
+		copy(c.w.eval.X, o.Guess)
+		c.settleJunctions()
 	}
-	var singular *SingularError
-	if errors.As(last, &singular) {
-		return nil, singular
+	if err := c.run(); err != nil {
+		return nil, err
 	}
-	return nil, c.explain(last)
+	return &Bias{X: append([]float64(nil), c.w.eval.X...), Rung: c.rung, Iterations: c.iterations, Work: c.w.work}, nil
 }
 
-// climb is one search for a bias point.
+// OptionError says that an option makes no sense.
+type OptionError struct {
+	Option string // the field's name
+	Want   string
+}
+
+func (e *OptionError) Error() string { return e.Option + ": want " + e.Want }
+
+// climb is one search for a solution of a problem.
 type climb struct {
 	ctx        context.Context
 	s          *System
 	w          *workspace
-	o          BiasOptions
+	base       problem // the user's own equations
+	log        *slog.Logger
+	rung       string
 	iterations int
-	best       []float64
-	bestNorm   float64
+	best       state
+	distance   float64 // length of the Newton update at best
 }
 
-// problem is the user's own equations.
-func (c *climb) problem() *problem { return &problem{time: c.o.Time, drive: 1} }
+// state is a point with the junction voltages that go with it.
+type state struct{ x, junctions []float64 }
+
+func (s *System) newState() state {
+	return state{make([]float64, len(s.names)), make([]float64, s.junctions)}
+}
+
+func (p *state) save(e *Eval) {
+	copy(p.x, e.X)
+	copy(p.junctions, e.Junctions)
+}
+
+func (p *state) load(e *Eval) {
+	copy(e.X, p.x)
+	copy(e.Junctions, p.junctions)
+}
+
+func (s *System) newClimb(ctx context.Context, w *workspace, base problem, log *slog.Logger) *climb {
+	if log == nil {
+		log = slog.New(slog.DiscardHandler)
+	}
+	return &climb{ctx: ctx, s: s, w: w, base: base, log: log, best: s.newState(), distance: math.Inf(1)}
+}
+
+// run tries one method after the other, each from the best point so far. It leaves the solution in the workspace.
+func (c *climb) run() error {
+	c.s.hold(c.w.eval.X, c.base.time, c.base.drive)
+	c.best.save(&c.w.eval)
+	rungs := []struct {
+		name string
+		run  func() error
+	}{{RungNewton, c.plain}, {RungDamped, c.damped}, {RungPseudo, c.pseudo}, {RungSources, c.sources}, {RungShunts, c.shunts}}
+	var last error
+	for _, r := range rungs {
+		c.rung = r.name
+		c.best.load(&c.w.eval)
+		err := r.run()
+		if err == nil {
+			err = c.accept()
+		}
+		if err == nil {
+			c.log.Debug("bias found", "rung", r.name, "iterations", c.iterations)
+			return nil
+		}
+		if c.ctx.Err() != nil {
+			return c.ctx.Err()
+		}
+		c.log.Debug("bias rung failed", "rung", r.name, "iterations", c.iterations, "reason", err)
+		last = err
+		c.compare()
+	}
+	return c.giveUp(last)
+}
+
+// giveUp says why no method found a solution.
+func (c *climb) giveUp(last error) error {
+	c.best.load(&c.w.eval)
+	c.settleJunctions()
+	var singular *SingularError
+	if errors.As(last, &singular) {
+		c.w.assemble(&c.base)
+		if c.w.factor() != nil {
+			return c.w.undetermined()
+		}
+		if err := c.w.determined(); err != nil {
+			return err
+		}
+	}
+	return c.resistance(last)
+}
+
+// compare keeps the better of the current point and the best so far.
+func (c *climb) compare() {
+	if math.IsInf(c.distance, 1) {
+		failed := c.s.newState()
+		failed.save(&c.w.eval)
+		c.best.load(&c.w.eval)
+		c.remember()
+		failed.load(&c.w.eval)
+	}
+	c.remember()
+}
+
+// remember keeps the current point if it is the best so far: the one with the shortest Newton update.
+func (c *climb) remember() {
+	w, e := c.w, &c.w.eval
+	e.Limit = false
+	c.s.hold(e.X, c.base.time, c.base.drive)
+	if w.step(&c.base) != nil {
+		return
+	}
+	copy(w.trial, e.X)
+	if d := w.length(w.update); d < c.distance {
+		c.distance = d
+		c.best.save(e)
+	}
+}
+
+// settleJunctions sets the junction voltages to those of the current point.
+func (c *climb) settleJunctions() {
+	c.w.eval.Limit = false
+	c.s.hold(c.w.eval.X, c.base.time, c.base.drive)
+	c.w.evaluate(&c.base)
+}
 
 func (c *climb) newton(p *problem, most int) error {
 	n, err := c.w.newton(c.ctx, p, most)
@@ -94,152 +187,14 @@ func (c *climb) newton(p *problem, most int) error {
 	return err
 }
 
-// restart goes back to the guess.
-func (c *climb) restart() {
-	clear(c.w.eval.X)
-	if c.o.Guess != nil {
-		copy(c.w.eval.X, c.o.Guess)
-	}
-	clear(c.w.eval.Junctions)
-	if c.o.Guess != nil {
-		c.settleJunctions()
-	}
-}
-
-// settleJunctions sets the junction voltages to those of the current point.
-func (c *climb) settleJunctions() {
-	c.w.eval.Limit = false
-	c.s.hold(c.w.eval.X, c.o.Time, 1)
-	c.w.evaluate(c.problem())
-}
-
 func (c *climb) plain() error {
-	c.restart()
-	return c.newton(c.problem(), biasIterations)
+	p := c.base
+	return c.newton(&p, biasIterations)
 }
 
-const (
-	continuationIterations = 30   // of Newton's method at one point of a continuation
-	continuationSteps      = 2000 // before a continuation is given up
-	easySteps              = 8    // iterations below which a continuation takes longer steps
-	smallestShare          = 1e-9 // of the whole way: a shorter step is no progress
-)
-
-// sources raises all independent sources from zero, with steps that adapt to how hard each was.
-func (c *climb) sources() error {
-	clear(c.w.eval.X)
-	clear(c.w.eval.Junctions)
-	good := append([]float64(nil), c.w.eval.X...)
-	goodJunctions := append([]float64(nil), c.w.eval.Junctions...)
-	at, step := 0.0, 0.1
-	for range continuationSteps {
-		next := math.Min(1, at+step)
-		before := c.iterations
-		p := c.problem()
-		p.drive = next
-		err := c.newton(p, continuationIterations)
-		if c.ctx.Err() != nil {
-			return c.ctx.Err()
-		}
-		if err != nil {
-			copy(c.w.eval.X, good)
-			copy(c.w.eval.Junctions, goodJunctions)
-			if step /= 4; step < smallestShare {
-				return err
-			}
-			continue
-		}
-		copy(good, c.w.eval.X)
-		copy(goodJunctions, c.w.eval.Junctions)
-		if at = next; at == 1 {
-			return nil
-		}
-		if c.iterations-before <= easySteps {
-			step *= 2
-		}
-	}
-	return errSlow
-}
-
-const (
-	firstShunt    = 1.0   // S
-	smallestShunt = 1e-15 // S; below it the shunts are left out altogether
-)
-
-// shunts puts a conductance from every free node to ground and withdraws it step by step, at last to exactly zero.
-func (c *climb) shunts() error {
-	clear(c.w.eval.X)
-	clear(c.w.eval.Junctions)
-	good := append([]float64(nil), c.w.eval.X...)
-	goodJunctions := append([]float64(nil), c.w.eval.Junctions...)
-	shunt, ratio := firstShunt, 0.1
-	for range continuationSteps {
-		before := c.iterations
-		p := c.problem()
-		p.shunt = shunt
-		err := c.newton(p, continuationIterations)
-		if c.ctx.Err() != nil {
-			return c.ctx.Err()
-		}
-		if err != nil {
-			copy(c.w.eval.X, good)
-			copy(c.w.eval.Junctions, goodJunctions)
-			if ratio > 0.99 || shunt == firstShunt {
-				return err
-			}
-			shunt /= ratio
-			ratio = math.Sqrt(ratio)
-			shunt *= ratio
-			continue
-		}
-		copy(good, c.w.eval.X)
-		copy(goodJunctions, c.w.eval.Junctions)
-		if shunt == 0 {
-			return nil
-		}
-		if c.iterations-before <= easySteps {
-			ratio = math.Max(1e-3, ratio*ratio)
-		}
-		if shunt *= ratio; shunt < smallestShunt {
-			shunt = 0
-		}
-	}
-	return errSlow
-}
-
-const (
-	firstPseudo = 1e-3 // S: the conductance of the first implicit step of the pseudo-time
-	pseudoGrow  = 4
-)
-
-// pseudo follows the circuit, with a conductance from every node to its last voltage instead of its own
-// capacitances, towards rest: pseudo-transient continuation (Kelley & Keyes, Convergence analysis of
-// pseudo-transient continuation, SIAM J. Numer. Anal. 35, 1998, 508-523).
-func (c *climb) pseudo() error {
-	c.restart()
-	anchor := append([]float64(nil), c.w.eval.X...)
-	junctions := append([]float64(nil), c.w.eval.Junctions...)
-	shunt := firstPseudo
-	for range continuationSteps {
-		p := c.problem()
-		p.shunt, p.anchor = shunt, anchor
-		err := c.newton(p, continuationIterations)
-		if c.ctx.Err() != nil {
-			return c.ctx.Err()
-		}
-		if err != nil {
-			copy(c.w.eval.X, anchor)
-			copy(c.w.eval.Junctions, junctions)
-			if shunt *= 10; shunt > 1e6 {
-				return err
-			}
-			continue
-		}
-		copy(anchor, c.w.eval.X)
-		copy(junctions, c.w.eval.Junctions)
-		if shunt /= pseudoGrow; shunt < smallestShunt {
-			return c.newton(c.problem(), biasIterations)
-		}
-	}
-	return errSlow
+func (c *climb) damped() error {
+	p := c.base
+	n, err := c.w.damped(c.ctx, &p, biasIterations)
+	c.iterations += n
+	return err
 }

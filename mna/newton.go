@@ -2,9 +2,8 @@ package mna
 
 import (
 	"context"
+	"errors"
 	"math"
-
-	"poise/mna/sparse"
 )
 
 // Newton's method stops when the last update of every unknown is below this share of the unknown, or below the
@@ -13,193 +12,178 @@ const (
 	updateShare  = 1e-9
 	voltageFloor = 1e-15 // V
 	currentFloor = 1e-18 // A
-	// balanceShare bounds the sum of the currents of a node against the sum of their magnitudes in an accepted answer.
-	balanceShare = 1e-12
+	// stallShare is what rounding may leave of an update beside the largest unknown of the same kind. An iteration that has come
+	// so near and gets no nearer has arrived; the balance of the currents then decides.
+	stallShare = 1e-10
+	// stallRatio is the ratio of two updates from which on an iteration gets no nearer.
+	stallRatio = 0.5
 )
 
-// problem is a system of equations to be solved by Newton's method:
-//
-//	f(x, t) + alpha q(x, t) + constant + shunt x = 0
-//
-// A bias has alpha = 0 and no constant; an implicit integration step has both.
-type problem struct {
-	time     float64
-	drive    float64
-	alpha    float64   // 1/s
-	constant []float64 // by unknown, nil if none
-	cold     bool
-	// shunt is a conductance in S from every free node to its anchor (nil: ground), 0 in an accepted answer.
-	shunt  float64
-	anchor []float64
-}
-
-// workspace holds what one goroutine needs to solve a system. Nothing in it is allocated during an iteration.
-type workspace struct {
-	sys      *System
-	eval     Eval
-	jacobian []float64
-	lu       *sparse.LU[float64]
-	update   []float64 // of the free unknowns
-	residual []float64
-	trial    []float64
-	work     Work
-}
-
-// Work counts what was done.
-type Work struct {
-	Evaluations    int // of the whole circuit
-	Factorisations int
-	Solves         int
-}
-
-func (s *System) newWorkspace() *workspace {
-	n := len(s.names)
-	w := &workspace{
-		sys: s,
-		eval: Eval{
-			X: make([]float64, n), F: make([]float64, n), Q: make([]float64, n),
-			G: make([]float64, s.slots), C: make([]float64, s.slots),
-			Drive: 1, Junctions: make([]float64, s.junctions),
-		},
-		jacobian: make([]float64, s.slots),
-		lu:       sparse.NewLU[float64](s.analysis),
-		update:   make([]float64, n-s.first()),
-		residual: make([]float64, n),
-		trial:    make([]float64, n),
-	}
-	return w
-}
-
-// first is the index of the first free unknown.
-func (s *System) first() int { return len(s.held) + 1 }
-
-// hold writes the voltages of the held nodes at time t.
-func (s *System) hold(x []float64, t, drive float64) {
-	x[0] = 0
-	for i, signal := range s.held {
-		x[i+1] = drive * signal.At(t)
-	}
-}
-
-// evaluate computes f, q, G and C at eval.X.
-func (w *workspace) evaluate(p *problem) {
-	e := &w.eval
-	e.Time, e.Drive, e.Cold = p.time, p.drive, p.cold
-	e.Dynamic = p.alpha != 0
-	e.Limited = false
-	clear(e.F)
-	clear(e.G)
-	if e.Dynamic {
-		clear(e.Q)
-		clear(e.C)
-	}
-	for _, s := range w.sys.stamps {
-		s.Eval(e)
-	}
-	w.work.Evaluations++
-}
-
-// assemble forms the residual and the Jacobian of the problem.
-func (w *workspace) assemble(p *problem) {
-	e := &w.eval
-	copy(w.residual, e.F)
-	copy(w.jacobian, e.G)
-	if p.alpha != 0 {
-		for i, q := range e.Q {
-			w.residual[i] += p.alpha * q
-		}
-		for k, c := range e.C {
-			w.jacobian[k] += p.alpha * c
-		}
-	}
-	for i, c := range p.constant {
-		w.residual[i] += c
-	}
-	if p.shunt != 0 {
-		w.addShunt(p)
-	}
-}
-
-// addShunt adds the conductances that help on the way and are gone in the answer.
-func (w *workspace) addShunt(p *problem) {
-	for i := w.sys.first(); i < len(w.residual); i++ {
-		slot := w.sys.diagonal[i]
-		if slot == 0 {
-			continue
-		}
-		v := w.eval.X[i]
-		if p.anchor != nil {
-			v -= p.anchor[i]
-		}
-		w.residual[i] += p.shunt * v
-		w.jacobian[slot] += p.shunt
-	}
-}
-
-// step computes the Newton update of the free unknowns.
-func (w *workspace) step() error {
-	if err := w.lu.Refactor(w.jacobian); err != nil {
-		return w.sys.explain(err)
-	}
-	w.work.Factorisations++
-	for i := range w.update {
-		w.update[i] = -w.residual[w.sys.first()+i]
-	}
-	w.lu.Solve(w.update)
-	w.work.Solves++
-	return nil
-}
-
-// limits of a solution by Newton's method.
 const (
 	biasIterations = 100
-	// runaway is a voltage or current that no front end reaches: an iterate beyond it has diverged.
-	runaway = 1e12
+	// runaway is a voltage or current beyond any that linear extrapolation of a junction's current can lead to on the way.
+	runaway = 1e25
 )
 
-// newton solves p from eval.X. It returns the number of iterations.
+var (
+	errDiverged = errors.New("the iteration diverged")
+	errSlow     = errors.New("the iteration did not settle")
+	errStuck    = errors.New("no shorter step improves the balance")
+)
+
+// arrival says how near an update has come.
+type arrival struct {
+	small  bool    // every unknown moved less than its tolerance
+	finite bool    // no unknown has run away or is NaN
+	move   float64 // largest update beside the largest unknown of its kind
+}
+
+// apply adds a share of the update to the free unknowns.
+func (w *workspace) apply(share float64) arrival {
+	first := w.sys.first()
+	x, branch := w.eval.X, w.sys.branch
+	a := arrival{small: true, finite: true}
+	moved, largest := [2]float64{}, [2]float64{voltageFloor, currentFloor}
+	for _, v := range x[:first] {
+		largest[0] = max(largest[0], math.Abs(v))
+	}
+	for i, d := range w.update {
+		d *= share
+		k := first + i
+		x[k] += d
+		kind, floor := 0, voltageFloor
+		if branch[k] {
+			kind, floor = 1, currentFloor
+		}
+		d, size := math.Abs(d), math.Abs(x[k])
+		if !(d <= updateShare*size+floor) {
+			a.small = false
+		}
+		if !(size <= runaway) {
+			a.finite = false
+		}
+		moved[kind], largest[kind] = max(moved[kind], d), max(largest[kind], size)
+	}
+	a.move = max(moved[0]/largest[0], moved[1]/largest[1])
+	return a
+}
+
+// newton solves p from eval.X by Newton's method, with the steps of junctions limited by their devices. It returns the number of iterations.
+// The last evaluation was not limited if it returns nil.
 func (w *workspace) newton(ctx context.Context, p *problem, most int) (int, error) {
 	e := &w.eval
 	w.sys.hold(e.X, p.time, p.drive)
 	e.Limit = true
+	defer func() { e.Limit = false }()
+	last := math.Inf(1)
 	for i := 1; i <= most; i++ {
 		if err := ctx.Err(); err != nil {
 			return i, err
 		}
-		w.evaluate(p)
-		w.assemble(p)
-		limited := e.Limited
-		if err := w.step(); err != nil {
+		if err := w.step(p); err != nil {
 			return i, err
 		}
-		small, finite := w.apply(1)
-		if !finite {
+		a := w.apply(1)
+		switch {
+		case !a.finite:
 			return i, errDiverged
-		}
-		if small && !limited {
+		case e.Limited:
+		case a.small, a.move <= stallShare && a.move >= stallRatio*last:
 			return i, nil
 		}
+		last = a.move
 	}
 	return most, errSlow
 }
 
-// apply adds a share of the update to the free unknowns and reports whether all of it was below the tolerance.
-func (w *workspace) apply(share float64) (small, finite bool) {
-	x := w.eval.X[w.sys.first():]
-	small, finite = true, true
-	for i, d := range w.update {
-		d *= share
-		x[i] += d
-		floor := voltageFloor
-		if w.sys.branch[w.sys.first()+i] {
-			floor = currentFloor
+// The damping of Deuflhard, Newton Methods for Nonlinear Problems, 2004, algorithm NLEQ-ERR, section 3.3.3: a step is
+// accepted if the simplified Newton update at its end is shorter than the update at its start. The test does not change
+// when equations are scaled, which spares a weighing of amperes against volts over twelve decades of conductance.
+const (
+	leastDamping  = 1e-8
+	firstDamping  = 1.0
+	dampingShrink = 0.1 // the least ratio of two tries
+	// The update of an unknown counts beside its size and at least beside these.
+	dampingVoltage = 1e-3 // V
+	dampingCurrent = 1e-9 // A
+)
+
+// damped solves p from eval.X by Newton's method with a line search on the equations as they are, without limits.
+func (w *workspace) damped(ctx context.Context, p *problem, most int) (int, error) {
+	e := &w.eval
+	w.sys.hold(e.X, p.time, p.drive)
+	e.Limit = false
+	w.evaluate(p)
+	w.assemble(p)
+	damping := firstDamping
+	step := make([]float64, len(w.update))
+	for i := 1; i <= most; i++ {
+		if err := ctx.Err(); err != nil {
+			return i, err
 		}
-		if !(math.Abs(d) <= updateShare*math.Abs(x[i])+floor) {
-			small = false
+		if err := w.factor(); err != nil {
+			return i, err
 		}
-		if !(math.Abs(x[i]) <= runaway) {
-			finite = false
+		w.solve()
+		copy(step, w.update)
+		copy(w.trial, e.X)
+		length := w.length(step)
+		if length == 0 {
+			return i, nil
 		}
+		next, a, err := w.search(p, step, length, damping)
+		if err != nil {
+			return i, err
+		}
+		if a.small && next == 1 {
+			return i, nil
+		}
+		damping = next
 	}
-	return small, finite
+	return most, errSlow
+}
+
+// search shortens the step from trial until the balance improves, leaves eval there and returns the damping to begin the next step
+// with: 1 after a full step.
+func (w *workspace) search(p *problem, step []float64, length, damping float64) (float64, arrival, error) {
+	for damping >= leastDamping {
+		copy(w.eval.X, w.trial)
+		copy(w.update, step)
+		a := w.apply(damping)
+		w.evaluate(p)
+		w.assemble(p)
+		w.solve()
+		after := w.length(w.update)
+		for i, d := range step {
+			w.update[i] -= (1 - damping) * d
+		}
+		ideal := math.Min(1, damping*damping*length/(2*w.length(w.update)))
+		if a.small && damping == 1 || after <= (1-damping/4)*length {
+			if damping == 1 {
+				ideal = 1
+			}
+			return math.Max(ideal, leastDamping), a, nil
+		}
+		if !(ideal < damping/2) {
+			ideal = damping / 2
+		}
+		damping = math.Max(ideal, dampingShrink*damping)
+	}
+	copy(w.eval.X, w.trial)
+	return 0, arrival{}, errStuck
+}
+
+// length is the root mean square of an update beside the size of each unknown.
+func (w *workspace) length(update []float64) float64 {
+	first := w.sys.first()
+	sum := 0.0
+	for i, d := range update {
+		floor := dampingVoltage
+		if w.sys.branch[first+i] {
+			floor = dampingCurrent
+		}
+		d /= math.Abs(w.trial[first+i]) + floor
+		sum += d * d
+	}
+	return math.Sqrt(sum / float64(max(1, len(update))))
 }

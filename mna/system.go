@@ -1,5 +1,28 @@
 package mna
 
+import "poise/mna/sparse"
+
+// System is a built circuit: immutable and safe for any number of goroutines, each of which gets a workspace of its own.
+type System struct {
+	unknown   []Unknown // of each node
+	names     []string  // of each unknown
+	branch    []bool    // of each unknown: a branch current
+	diagonal  []Slot    // of each unknown that is a node: its own slot, 0 for a branch
+	held      []Signal  // of unknowns 1 .. len(held)
+	signals   []Signal  // all independent sources, held ones last
+	devices   []placed
+	stamps    []Stamp     // of each device
+	internals [][]Unknown // of each device
+
+	touched    []Unknown // the rows that the devices add to, device after device
+	touchedEnd []int     // of each device: the end of its part of touched
+
+	junctions  int
+	slots      int
+	rows, cols []int32 // of each slot, in the whole system
+	analysis   *sparse.Analysis
+}
+
 // Unknown returns the place of a node in the solution.
 func (s *System) Unknown(node int) Unknown { return s.unknown[node] }
 
@@ -20,105 +43,13 @@ func (s *System) Unknowns(device int) (pins, internals []Unknown) {
 	return pins, append([]Unknown(nil), s.internals[device]...)
 }
 
-// Probe is a device bound alone, to a small layout of its own: it reads the currents into pins that
-// may share a node. It belongs to one goroutine.
-type Probe struct {
-	stamp Stamp
-	eval  Eval
-	from  []Unknown // of the system, for each local unknown but ground
-	pins  int
-	rows  []int32
-	cols  []int32
-}
+// first is the index of the first free unknown.
+func (s *System) first() int { return len(s.held) + 1 }
 
-// Probe returns a probe of a device. Local unknown i+1 is pin i, then what is inside.
-func (s *System) Probe(device int) *Probe {
-	d := s.devices[device]
-	pins, internals := s.Unknowns(device)
-	p := &Probe{from: append(pins, internals...), pins: len(pins)}
-	b := &probeBinding{pins: len(pins), next: Unknown(len(pins) + 1), slot: map[[2]Unknown]Slot{}, rows: []int32{0}, cols: []int32{0}}
-	p.stamp = d.device.Bind(b)
-	n := len(p.from) + 1
-	p.rows, p.cols = b.rows, b.cols
-	p.eval = Eval{
-		X: make([]float64, n), F: make([]float64, n), Q: make([]float64, n),
-		G: make([]float64, len(b.rows)), C: make([]float64, len(b.rows)),
-		Dynamic: true, Drive: 1, Junctions: make([]float64, b.junctions),
+// hold writes the voltages of the held nodes at time t in s.
+func (s *System) hold(x []float64, t, drive float64) {
+	x[0] = 0
+	for i, signal := range s.held {
+		x[i+1] = drive * signal.At(t)
 	}
-	return p
-}
-
-// probeBinding is the Binder of a probe: every pin has an unknown of its own.
-type probeBinding struct {
-	pins       int
-	next       Unknown
-	slot       map[[2]Unknown]Slot
-	rows, cols []int32
-	junctions  int
-}
-
-func (b *probeBinding) Pin(i int) Unknown { return Unknown(i + 1) }
-
-func (b *probeBinding) Internal(string) Unknown {
-	b.next++
-	return b.next - 1
-}
-
-func (b *probeBinding) Branch(name string) Unknown { return b.Internal(name) }
-
-func (b *probeBinding) Slot(row, col Unknown) Slot {
-	key := [2]Unknown{row, col}
-	if s, ok := b.slot[key]; ok {
-		return s
-	}
-	s := Slot(len(b.rows))
-	b.slot[key] = s
-	b.rows = append(b.rows, int32(row))
-	b.cols = append(b.cols, int32(col))
-	return s
-}
-
-func (b *probeBinding) Junction() int {
-	b.junctions++
-	return b.junctions - 1
-}
-
-// Load evaluates the device at a solution x of the system and time t in s.
-func (p *Probe) Load(x []float64, t float64) {
-	for i, u := range p.from {
-		p.eval.X[i+1] = x[u]
-	}
-	e := &p.eval
-	e.Time = t
-	clear(e.F)
-	clear(e.Q)
-	clear(e.G)
-	clear(e.C)
-	p.stamp.Eval(e)
-}
-
-// Current returns the resistive current into a pin, in A. The whole current is this and the rate of [Probe.Charge].
-func (p *Probe) Current(pin int) float64 { return p.eval.F[pin+1] }
-
-// Charge returns the charge in C whose rate adds to the current into a pin.
-func (p *Probe) Charge(pin int) float64 { return p.eval.Q[pin+1] }
-
-// Operating returns the device's operating quantities at the loaded point, nil if it has none.
-func (p *Probe) Operating() []Quantity {
-	if o, ok := p.stamp.(Operating); ok {
-		return o.Operating(&p.eval)
-	}
-	return nil
-}
-
-// Small returns the small-signal current into a pin at the loaded point for the small-signal solution x of the system at
-// the angular frequency omega in rad/s.
-func (p *Probe) Small(pin int, omega float64, x []complex128) complex128 {
-	sum := complex128(0)
-	for k, row := range p.rows {
-		if int(row) == pin+1 && p.cols[k] > 0 {
-			sum += complex(p.eval.G[k], omega*p.eval.C[k]) * x[p.from[p.cols[k]-1]]
-		}
-	}
-	return sum
 }

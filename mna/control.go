@@ -1,0 +1,47 @@
+package mna
+
+import "math"
+
+// The controller of Gustafsson, Lundh & Soderlind, A PI stepsize control for the numerical solution of ordinary differential
+// equations, BIT 28, 1988, 270-287, with its recommended gains 0.7/k and 0.4/k for an error that goes with the k-th power of the step.
+const (
+	safety       = 0.9
+	integralGain = 0.7
+	pastGain     = 0.4
+	shrinkMost   = 0.2
+	growMost     = 4.0
+	leastError   = 1e-4 // errors below it are not told apart
+)
+
+// control proposes step lengths from the ratio of estimated to allowed error.
+type control struct {
+	power    float64 // of the step in the error
+	last     float64 // ratio of the last accepted step
+	ratio    float64 // of the step judged last
+	rejected bool    // since the last accepted step
+}
+
+func newControl(power float64) control { return control{power: power, last: 1} }
+
+// restart forgets the past.
+func (c *control) restart() { c.last, c.rejected = 1, false }
+
+// factor returns by what the step should be multiplied after one with this ratio of estimated to allowed error.
+func (c *control) factor(ratio float64) float64 {
+	c.ratio = math.Max(ratio, leastError)
+	if !(ratio <= 1) {
+		c.rejected = true
+		if math.IsNaN(ratio) || math.IsInf(ratio, 1) {
+			return shrinkMost
+		}
+		return math.Max(shrinkMost, safety*math.Pow(ratio, -1/c.power))
+	}
+	f := safety * math.Pow(c.ratio, -integralGain/c.power) * math.Pow(c.last, pastGain/c.power)
+	if c.rejected {
+		f = math.Min(f, 1)
+	}
+	return math.Max(shrinkMost, math.Min(growMost, f))
+}
+
+// accept takes the step judged last as the past of the next.
+func (c *control) accept() { c.last, c.rejected = c.ratio, false }

@@ -1,0 +1,86 @@
+package mna
+
+import "math"
+
+const (
+	// localShare is the allowed error of one step as a share of the accuracy a user asks for: errors of many steps add up.
+	localShare = 0.1
+	// denseShare is the same for the interpolation within a step, whose errors do not add up.
+	denseShare = 0.3
+
+	// An unknown that hardly moves is not resolved below these shares: of its size, of the largest size of its kind, and of the
+	// largest swing of a stimulus (a signal 100 dB below the stimulus still counts with its own swing at the default accuracy).
+	sizeShare     = 1e-6
+	largestShare  = 1e-8
+	stimulusShare = 1e-4
+	leastVoltage  = 1e-9  // V
+	leastCurrent  = 1e-13 // A
+	// stimulusSiemens turns the stimulus and the voltages into floors for branch currents.
+	stimulusSiemens = 1e-8 // S
+	// stimulusSamples is the number of points at which a stimulus is looked at over its time scale.
+	stimulusSamples = 16
+)
+
+// resolution knows how far every unknown has swung, and so what error is allowed.
+type resolution struct {
+	accuracy  float64
+	branch    []bool
+	low, high []float64 // of each unknown so far
+	stimulus  float64   // V or A, the largest swing of a signal seen or ahead
+	swing     []float64 // of each unknown, floors included
+	perError  []float64 // of each unknown: 1/allowed error of a step over which it moves by no more than its swing
+	worst     int       // the unknown with the largest error in the last step
+}
+
+func newResolution(s *System, accuracy float64) *resolution {
+	n := len(s.names)
+	return &resolution{
+		accuracy: accuracy, branch: s.branch,
+		low: make([]float64, n), high: make([]float64, n), swing: make([]float64, n), perError: make([]float64, n),
+	}
+}
+
+// lookAhead raises the stimulus to the largest swing of a signal over its time scale from t on, both in s.
+func (z *resolution) lookAhead(signals []Signal, t, until float64) {
+	for _, signal := range signals {
+		scale := math.Min(signal.Scale(t), until)
+		low, high := math.Inf(1), math.Inf(-1)
+		for k := range stimulusSamples + 1 {
+			v := signal.At(t + scale*float64(k)/stimulusSamples)
+			low, high = math.Min(low, v), math.Max(high, v)
+		}
+		z.stimulus = math.Max(z.stimulus, high-low)
+	}
+}
+
+// anchor starts all swings at x.
+func (z *resolution) anchor(x []float64) {
+	copy(z.low, x)
+	copy(z.high, x)
+}
+
+// widen takes x into the swings.
+func (z *resolution) widen(x []float64) {
+	largest := 0.0
+	for i, v := range x {
+		z.low[i], z.high[i] = min(z.low[i], v), max(z.high[i], v)
+		if !z.branch[i] {
+			largest = max(largest, math.Abs(v))
+		}
+	}
+	common := max(stimulusShare*z.stimulus, largestShare*largest)
+	for i := range x {
+		floor := max(leastVoltage, common)
+		if z.branch[i] {
+			floor = max(leastCurrent, stimulusSiemens*common)
+		}
+		size := max(math.Abs(z.low[i]), math.Abs(z.high[i]))
+		z.swing[i] = max(z.high[i]-z.low[i], sizeShare*size, floor)
+		z.perError[i] = 1 / z.local(i, 0)
+	}
+}
+
+// local returns the allowed error of an unknown in a step over which it moves by the given amount.
+func (z *resolution) local(i int, move float64) float64 {
+	return localShare * z.accuracy * max(z.swing[i], math.Abs(move))
+}

@@ -1,0 +1,139 @@
+package mna
+
+import "poise/mna/sparse"
+
+// problem is a system of equations to be solved by Newton's method:
+//
+//	f(x, t) + alpha q(x, t) + constant + shunt (x - anchor) = 0
+//
+// A bias has alpha = 0 and no constant; a stage of an implicit integration method has both.
+type problem struct {
+	time     float64   // s
+	drive    float64   // of all independent sources, 0..1
+	alpha    float64   // 1/s
+	constant []float64 // by unknown, nil if none
+	cold     bool
+	// shunt is a conductance in S from every free node to its anchor (nil: ground). It is 0 in an accepted answer.
+	shunt  float64
+	anchor []float64
+}
+
+// workspace holds what one goroutine needs to solve a system. Nothing in it is allocated during an iteration.
+type workspace struct {
+	sys      *System
+	eval     Eval
+	jacobian []float64 // by slot
+	residual []float64 // by unknown
+	lu       *sparse.LU[float64]
+	update   []float64 // of the free unknowns
+	trial    []float64 // by unknown
+	work     Work
+}
+
+// Work counts what was done.
+type Work struct {
+	Evaluations    int // of the whole circuit
+	Factorisations int
+	Solves         int
+}
+
+func (s *System) newWorkspace() *workspace {
+	n := len(s.names)
+	return &workspace{
+		sys: s,
+		eval: Eval{
+			X: make([]float64, n), F: make([]float64, n), Q: make([]float64, n),
+			G: make([]float64, s.slots), C: make([]float64, s.slots),
+			Drive: 1, Junctions: make([]float64, s.junctions),
+		},
+		jacobian: make([]float64, s.slots),
+		lu:       sparse.NewLU[float64](s.analysis),
+		update:   make([]float64, n-s.first()),
+		residual: make([]float64, n),
+		trial:    make([]float64, n),
+	}
+}
+
+// evaluate computes f, q, G and C at eval.X.
+func (w *workspace) evaluate(p *problem) {
+	e := &w.eval
+	e.Time, e.Drive, e.Cold = p.time, p.drive, p.cold
+	e.Dynamic = p.alpha != 0
+	e.Limited = false
+	clear(e.F)
+	clear(e.G)
+	if e.Dynamic {
+		clear(e.Q)
+		clear(e.C)
+	}
+	for _, s := range w.sys.stamps {
+		s.Eval(e)
+	}
+	w.work.Evaluations++
+}
+
+// assemble forms the residual and the Jacobian of the problem from the evaluation.
+func (w *workspace) assemble(p *problem) {
+	e := &w.eval
+	copy(w.residual, e.F)
+	copy(w.jacobian, e.G)
+	if p.alpha != 0 {
+		for i, q := range e.Q {
+			w.residual[i] += p.alpha * q
+		}
+		for k, c := range e.C {
+			w.jacobian[k] += p.alpha * c
+		}
+	}
+	for i, c := range p.constant {
+		w.residual[i] += c
+	}
+	if p.shunt != 0 {
+		w.addShunt(p)
+	}
+}
+
+// addShunt adds the conductances that help on the way and are gone in the answer.
+func (w *workspace) addShunt(p *problem) {
+	for i := w.sys.first(); i < len(w.residual); i++ {
+		slot := w.sys.diagonal[i]
+		if slot == 0 {
+			continue
+		}
+		v := w.eval.X[i]
+		if p.anchor != nil {
+			v -= p.anchor[i]
+		}
+		w.residual[i] += p.shunt * v
+		w.jacobian[slot] += p.shunt
+	}
+}
+
+// factor factors the Jacobian. It returns *SingularError.
+func (w *workspace) factor() error {
+	w.work.Factorisations++
+	if err := w.lu.Refactor(w.jacobian); err != nil {
+		return w.sys.explain(err)
+	}
+	return nil
+}
+
+// solve computes the Newton update of the free unknowns for the residual, on the last factors.
+func (w *workspace) solve() {
+	for i := range w.update {
+		w.update[i] = -w.residual[w.sys.first()+i]
+	}
+	w.lu.Solve(w.update)
+	w.work.Solves++
+}
+
+// step evaluates the problem at eval.X and computes the Newton update.
+func (w *workspace) step(p *problem) error {
+	w.evaluate(p)
+	w.assemble(p)
+	if err := w.factor(); err != nil {
+		return err
+	}
+	w.solve()
+	return nil
+}
