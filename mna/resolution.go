@@ -3,14 +3,17 @@ package mna
 import "math"
 
 const (
-	// localShare is the allowed error of one step as a share of the accuracy a user asks for: errors of many steps add up.
-	localShare = 0.1
-	// denseShare is the same for the interpolation within a step, whose errors do not add up.
+	// The allowed error of one step is localShare of the accuracy a user asks for, at an accuracy of 1e-3 or worse: errors of many steps add
+	// up. From there it falls faster than the accuracy. A local error e costs e^(1/(k+1)) fewer steps with a method of order
+	// k, so that the sum goes with e^(k/(k+1)); for the sum to go with the accuracy, e must go with its power (k+1)/k.
+	localShare    = 0.05
+	localAccuracy = 1e-3
+	// denseShare is the share for the interpolation within a step, whose errors do not add up.
 	denseShare = 0.3
 
 	// An unknown that hardly moves is not resolved below these shares: of its size, of the largest size of its kind, and of the
 	// largest swing of a stimulus (a signal 100 dB below the stimulus still counts with its own swing at the default accuracy).
-	sizeShare     = 1e-6
+	sizeShare     = 1e-5
 	largestShare  = 1e-8
 	stimulusShare = 1e-4
 	leastVoltage  = 1e-9  // V
@@ -23,7 +26,8 @@ const (
 
 // resolution knows how far every unknown has swung, and so what error is allowed.
 type resolution struct {
-	accuracy  float64
+	tolerance float64 // allowed error of a step beside the swing
+	dense     float64 // allowed error of the interpolation, beside tolerance
 	branch    []bool
 	low, high []float64 // of each unknown so far
 	stimulus  float64   // V or A, the largest swing of a signal seen or ahead
@@ -32,10 +36,12 @@ type resolution struct {
 	worst     int       // the unknown with the largest error in the last step
 }
 
-func newResolution(s *System, accuracy float64) *resolution {
+// newResolution returns the resolution for a method of the given order.
+func newResolution(s *System, accuracy, order float64) *resolution {
 	n := len(s.names)
+	tolerance := localShare * accuracy * math.Pow(math.Min(1, accuracy/localAccuracy), 1/order)
 	return &resolution{
-		accuracy: accuracy, branch: s.branch,
+		tolerance: tolerance, dense: denseShare * accuracy / tolerance, branch: s.branch,
 		low: make([]float64, n), high: make([]float64, n), swing: make([]float64, n), perError: make([]float64, n),
 	}
 }
@@ -82,5 +88,5 @@ func (z *resolution) widen(x []float64) {
 
 // local returns the allowed error of an unknown in a step over which it moves by the given amount.
 func (z *resolution) local(i int, move float64) float64 {
-	return localShare * z.accuracy * max(z.swing[i], math.Abs(move))
+	return z.tolerance * max(z.swing[i], math.Abs(move))
 }

@@ -4,7 +4,7 @@ import "math"
 
 const (
 	// settleShare is the length of the implicit step that makes a point consistent, as a share of the first step.
-	settleShare = 1e-6
+	settleShare = 1e-5
 	// settleBits is the same in last bits of the time: below it differences of signals are rounding.
 	settleBits = 1024
 	// settleMost bounds it, as a share of the first step.
@@ -55,6 +55,7 @@ func (r *integration) enter(from *point) error {
 		r.anchor(start.x)
 	}
 	r.widen(start.x)
+	r.t = start.t
 	r.method.restart(start)
 	return nil
 }
@@ -99,9 +100,7 @@ func (r *integration) settle(from *point) (*point, error) {
 		to.t = p.time
 		copy(to.x, r.w.eval.X)
 		copy(to.q, r.w.eval.Q)
-		for i, q := range to.q {
-			to.rate[i] = p.alpha*q + p.constant[i]
-		}
+		to.setRate(r.w.eval.F)
 	}
 	return &to, nil
 }

@@ -11,7 +11,11 @@ const (
 	// rounding.
 	curvatureFrom = 0.1
 	// curvatureMemory is what an old, larger estimate keeps of its weight against a new one.
-	curvatureMemory = 0.5
+	curvatureMemory = 0.8
+	// curvatureLife is the number of stages for which an estimate is trusted.
+	curvatureLife = 40
+	// curvatureReach is how much larger an update may be than the one that told the curvature.
+	curvatureReach = 4
 	// roundingShare is an update beside the unknown that is rounding.
 	roundingShare = 16 * 0x1p-52
 )
@@ -24,14 +28,17 @@ const (
 type stageNewton struct {
 	r         *integration
 	curvature float64 // infinite: not known
+	reach     float64 // the size of the update it was learnt from
+	age       int     // stages since then
 }
 
-// solve solves p from eval.X. It leaves in eval the charges of the solution.
+// solve solves p from eval.X. It leaves in eval the currents and charges of the solution.
 func (n *stageNewton) solve(p *problem) error {
 	w := n.r.w
 	w.sys.hold(w.eval.X, p.time, p.drive)
 	w.eval.Limit = true
 	last := 0.0
+	n.age++
 	for range stageIterations {
 		if err := w.step(p); err != nil {
 			return err
@@ -44,10 +51,16 @@ func (n *stageNewton) solve(p *problem) error {
 			last = 0
 			continue
 		case last >= curvatureFrom:
-			n.learn(size / (last * last))
+			n.learn(size/(last*last), last)
+		case last > 0:
+			n.age = 0 // rounding tells nothing, but nor is anything wrong
 		}
-		if size <= stageShare || n.curvature*size*size <= stageShare {
-			w.carryCharges()
+		if size <= stageShare || n.leaves(size) <= stageShare && (last > 0 || n.trusts(size)) {
+			w.carry()
+			return nil
+		}
+		if last > 0 && size > stallRatio*last && w.movement() <= stallShare {
+			w.carry()
 			return nil
 		}
 		if last > 0 && size > 2*last {
@@ -58,11 +71,19 @@ func (n *stageNewton) solve(p *problem) error {
 	return errSlow
 }
 
-func (n *stageNewton) learn(curvature float64) {
+// leaves is the error after an update, in allowed errors.
+func (n *stageNewton) leaves(size float64) float64 { return n.curvature * size * size }
+
+// trusts reports whether the curvature is known well enough for an update that no other follows.
+func (n *stageNewton) trusts(size float64) bool {
+	return n.age < curvatureLife && size <= curvatureReach*n.reach
+}
+
+func (n *stageNewton) learn(curvature, size float64) {
 	if n.curvature > curvature && !math.IsInf(n.curvature, 1) {
 		curvature = math.Max(curvature, curvatureMemory*n.curvature)
 	}
-	n.curvature = curvature
+	n.curvature, n.reach, n.age = curvature, size, 0
 }
 
 // apply adds the update to the free unknowns and returns its size in allowed errors.
@@ -83,13 +104,15 @@ func (n *stageNewton) apply() (size float64, finite bool) {
 	return size, finite
 }
 
-// carryCharges moves the charges in eval along the last update: exact but for the square of a tiny step, and consistent with
-// the currents, which Newton's method carries the same way.
-func (w *workspace) carryCharges() {
-	first := int32(w.sys.first())
-	for k, c := range w.eval.C {
-		if col := w.sys.cols[k]; c != 0 && col >= first {
-			w.eval.Q[w.sys.rows[k]] += c * w.update[col-first]
+// carry moves the currents and charges in eval along the last update: exact but for the square of a tiny step.
+func (w *workspace) carry() {
+	e, first := &w.eval, int32(w.sys.first())
+	for k, col := range w.sys.cols {
+		if col < first {
+			continue
 		}
+		row, d := w.sys.rows[k], w.update[col-first]
+		e.F[row] += e.G[k] * d
+		e.Q[row] += e.C[k] * d
 	}
 }

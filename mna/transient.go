@@ -117,9 +117,12 @@ type integration struct {
 	method method
 	*resolution
 
-	t      float64 // s, end of the last accepted step
+	t      float64 // s, end of the last accepted step; after a restart the time of the consistent point, just after the corner
+	since  float64 // s, where the next step begins: t but for a restart, where it is the corner
 	h      float64 // s, the step to try
 	corner float64 // s, the next corner
+
+	refused refusal // the first step refused since the last accepted one
 }
 
 // method is an implicit integration method. It keeps what it needs of the past.
@@ -147,6 +150,13 @@ type point struct {
 	rate []float64 // dq/dt
 }
 
+// setRate takes dq/dt from the currents: as a difference of charges it would carry their rounding over a short step.
+func (p *point) setRate(f []float64) {
+	for i, v := range f {
+		p.rate[i] = -v
+	}
+}
+
 func (s *System) newPoint() point {
 	n := len(s.names)
 	return point{x: make([]float64, n), q: make([]float64, n), rate: make([]float64, n)}
@@ -159,7 +169,7 @@ func newIntegration(ctx context.Context, s *System, o TransientOptions) *integra
 	if o.Logger == nil {
 		o.Logger = slog.New(slog.DiscardHandler)
 	}
-	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger, resolution: newResolution(s, o.Accuracy)}
+	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger, resolution: newResolution(s, o.Accuracy, trbdf2Order)}
 	r.method = newTRBDF2(r)
 	return r
 }
@@ -172,7 +182,7 @@ func (r *integration) run(sink func(*Step) error) error {
 		if err := r.ctx.Err(); err != nil {
 			return err
 		}
-		start := r.t
+		start := r.since
 		accepted, err := r.try()
 		if err != nil {
 			return err
@@ -212,13 +222,39 @@ func (r *integration) try() (bool, error) {
 	}
 	ratio, worst, next := r.method.judge()
 	r.worst, r.h = worst, next
-	if !(ratio <= 1) {
+	if !(ratio <= 1) && !r.stubborn(ratio, end-r.t) {
 		r.stats.Rejected++
 		return false, nil
 	}
+	r.refused = refusal{}
 	r.method.accept()
-	r.t = end
+	r.t, r.since = end, end
 	return true, nil
+}
+
+const (
+	// stubbornShrink is the ratio of two steps over which an error must fall, or it is none of the step.
+	stubbornShrink = 1e-6
+	// stubbornFirst is the same right after a restart, where steps are short from the start.
+	stubbornFirst = 1e-3
+	// stubbornRatio is the ratio of the errors from which on they do not fall.
+	stubbornRatio = 0.5
+)
+
+// refusal is the first of a row of refused steps.
+type refusal struct{ ratio, length float64 }
+
+// stubborn reports whether the error has not fallen while the step was made shorter and shorter: it was there before (a slope that rounding spoilt at a
+// corner), and an L-stable method loses it with the next step.
+func (r *integration) stubborn(ratio, length float64) bool {
+	if r.refused.length == 0 {
+		r.refused = refusal{ratio, length}
+	}
+	shrink := stubbornShrink
+	if r.since < r.t {
+		shrink = stubbornFirst
+	}
+	return length <= shrink*r.refused.length && ratio >= stubbornRatio*r.refused.ratio && !math.IsInf(ratio, 1)
 }
 
 // shortest is the length in s of the shortest step from the present time.

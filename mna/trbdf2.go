@@ -16,6 +16,9 @@ const (
 	errorMiddle = earlier - (3*earlier+1)/3
 	errorEnd    = share - share/3
 
+	// errorConstant is the error of a step over h^3 times the third derivative (Bank et al., equation 29, for this gamma).
+	errorConstant = (-3*gamma*gamma + 4*gamma - 2) / (12 * (2 - gamma))
+
 	trbdf2Order = 2
 )
 
@@ -25,6 +28,8 @@ type trbdf2 struct {
 	control  control
 	newton   stageNewton
 	constant []float64
+	// Of the free unknowns: the error at the end of the step, what it leaves behind, and rounding.
+	whole, left, noise []float64
 
 	// The step attempted runs over start, middle and finish; the two earlier points belong to the step before it. accept moves all of
 	// them back by one step, after which the last step runs over earlierStart, earlierMiddle and start, and middle is the one before.
@@ -36,9 +41,10 @@ type trbdf2 struct {
 }
 
 func newTRBDF2(r *integration) *trbdf2 {
-	s := r.s
+	s, free := r.s, len(r.s.names)-r.s.first()
 	return &trbdf2{
 		r: r, control: newControl(trbdf2Order + 1), newton: stageNewton{r: r, curvature: math.Inf(1)}, constant: make([]float64, len(s.names)),
+		whole: make([]float64, free), left: make([]float64, free), noise: make([]float64, free),
 		earlierStart: s.newPoint(), earlierMiddle: s.newPoint(), start: s.newPoint(), middle: s.newPoint(), finish: s.newPoint(),
 	}
 }
@@ -91,41 +97,110 @@ func (m *trbdf2) stage(p *point, t, alpha float64) error {
 	p.t = t
 	copy(p.x, m.r.w.eval.X)
 	copy(p.q, m.r.w.eval.Q)
-	for i, q := range p.q {
-		p.rate[i] = alpha*q + m.constant[i]
-	}
+	p.setRate(m.r.w.eval.F)
 	return nil
 }
 
 // judge estimates the error of every unknown at the end of the step and of its interpolation within.
 //
 // The estimate of the charges, the difference to the embedded third-order result, is carried to the unknowns by the Jacobian of the
-// last stage, which also keeps it bounded for stiff components (Hosea & Shampine, section 3). That of the interpolation is the fourth divided
-// difference.
+// last stage, which also keeps it bounded for stiff components (Hosea & Shampine, section 3). It takes an error of the slope at the start for one of this step; for the
+// current of a capacitance across an ideal source, which is such a slope, that error does not fall with the step, yet the second stage
+// removes it. So before a step is refused, the third divided difference of the charges, which knows no slopes, is asked as well, and
+// then whether the error is more than rounding.
 func (m *trbdf2) judge() (float64, int, float64) {
-	r := m.r
-	first := r.s.first()
-	update := r.w.update
+	update, first := m.r.w.update, m.r.s.first()
 	for i := range update {
 		k := first + i
 		update[i] = (errorStart*m.start.rate[k] + errorMiddle*m.middle.rate[k] + errorEnd*m.finish.rate[k]) / share
 	}
-	r.w.lu.Solve(update)
-	r.w.work.Solves++
+	m.carry()
+	ratio, worst := m.rank(0)
+	if ratio > 1 && m.steps > 0 {
+		d := m.third()
+		for i := range update {
+			k := first + i
+			update[i] = d[0]*m.earlierMiddle.q[k] + d[1]*m.start.q[k] + d[2]*m.middle.q[k] + d[3]*m.finish.q[k]
+		}
+		m.carry()
+		if again, where := m.rank(0); again < ratio {
+			ratio, worst = again, where
+		}
+	}
+	if ratio > 1 {
+		m.listen()
+		if again, where := m.rank(noiseMargin); again < ratio {
+			ratio, worst = again, where
+		}
+	}
+	return ratio, worst, m.h * m.control.factor(ratio)
+}
+
+// carry takes the error of the charges, as a rate, from the workspace's update to the unknowns.
+//
+// Two errors count: what the step leaves in the charges, which adds up over the steps, and the whole error at the end of the step and within it, which
+// does not. An error e of the unknowns leaves C e in the charges; what of that is still there at the end of the next stage is
+// (G + alpha C)^-1 alpha C e. Of components that are fast beside the step next to nothing is, and they do not cost steps.
+func (m *trbdf2) carry() {
+	w := m.r.w
+	w.lu.Solve(w.update)
+	copy(m.whole, w.update)
+	w.chargeRates(w.update, m.whole, 1/(share*m.h))
+	w.lu.Solve(w.update)
+	copy(m.left, w.update)
+	w.work.Solves += 2
+}
+
+// noiseMargin is how many times the rounding of the unknowns an error must exceed to be one.
+const noiseMargin = 16
+
+// listen finds how much of the unknowns is rounding: in a short step the charges of nodes far from ground are large beside their change, and
+// currents made of them carry their last bits.
+func (m *trbdf2) listen() {
+	w := m.r.w
+	w.chargeRounding(w.update, 1/(share*m.h))
+	w.lu.Solve(w.update)
+	w.work.Solves++
+	copy(m.noise, w.update)
+}
+
+// rank returns the largest error beside the allowed one, after a margin of noises is taken off, and where it is. It is infinite if
+// any is not a number.
+func (m *trbdf2) rank(margin float64) (float64, int) {
+	r := m.r
 	bend := m.bend()
 	ratio, worst := 0.0, 0
-	for i, e := range update {
-		k := first + i
-		e = max(math.Abs(e), localShare/denseShare*math.Abs(bend.of(m, k))) // NaN stays
+	for i, left := range m.left {
+		k := r.s.first() + i
+		e := max(math.Abs(left), math.Abs(m.whole[i])/r.dense, math.Abs(bend.of(m, k))/r.dense) // NaN stays
+		if margin > 0 {
+			e -= margin * math.Abs(m.noise[i])
+		}
 		e /= r.local(k, m.finish.x[k]-m.start.x[k])
 		if !(e <= math.MaxFloat64) {
-			return math.Inf(1), k, m.h * m.control.factor(math.Inf(1))
+			return math.Inf(1), k
 		}
 		if e > ratio {
 			ratio, worst = e, k
 		}
 	}
-	return ratio, worst, m.h * m.control.factor(ratio)
+	return ratio, worst
+}
+
+// third returns the weights of the charges at the last four points in the error of the end of the step, as a rate: alpha errorConstant h^3 times their third
+// derivative.
+func (m *trbdf2) third() [4]float64 {
+	t := [4]float64{m.earlierMiddle.t, m.start.t, m.middle.t, m.finish.t}
+	var d [4]float64
+	for i := range d {
+		d[i] = 6 * errorConstant * m.h * m.h / share
+		for j := range t {
+			if j != i {
+				d[i] /= t[i] - t[j]
+			}
+		}
+	}
+	return d
 }
 
 // bending holds the weights of five points in the error of the cubic through the last four of them.

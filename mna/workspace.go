@@ -1,6 +1,10 @@
 package mna
 
-import "poise/mna/sparse"
+import (
+	"math"
+
+	"poise/mna/sparse"
+)
 
 // problem is a system of equations to be solved by Newton's method:
 //
@@ -136,4 +140,47 @@ func (w *workspace) step(p *problem) error {
 	}
 	w.solve()
 	return nil
+}
+
+// chargeRates fills rates with alpha C x, both of the free unknowns.
+func (w *workspace) chargeRates(rates, x []float64, alpha float64) {
+	clear(rates)
+	first := int32(w.sys.first())
+	for k, c := range w.eval.C {
+		if row, col := w.sys.rows[k], w.sys.cols[k]; row >= first && col >= first {
+			rates[row-first] += alpha * c * x[col-first]
+		}
+	}
+}
+
+// chargeRounding fills rates with numbers of irregular sign and of the size of the rounding of alpha q.
+func (w *workspace) chargeRounding(rates []float64, alpha float64) {
+	const bit = 0x1p-52
+	clear(rates)
+	first := int32(w.sys.first())
+	for k, c := range w.eval.C {
+		if row, col := w.sys.rows[k], w.sys.cols[k]; row >= first && col > 0 {
+			rates[row-first] += bit * alpha * math.Abs(c*w.eval.X[col])
+		}
+	}
+	for i := range rates {
+		rates[i] *= mixedSign(i)
+	}
+}
+
+// movement is the largest update beside the largest unknown of its kind.
+func (w *workspace) movement() float64 {
+	first := w.sys.first()
+	moved, largest := [2]float64{}, [2]float64{voltageFloor, currentFloor}
+	for k, v := range w.eval.X {
+		kind := 0
+		if w.sys.branch[k] {
+			kind = 1
+		}
+		largest[kind] = max(largest[kind], math.Abs(v))
+		if k >= first {
+			moved[kind] = max(moved[kind], math.Abs(w.update[k-first]))
+		}
+	}
+	return max(moved[0]/largest[0], moved[1]/largest[1])
 }
