@@ -40,13 +40,13 @@ func bandOf(q netlist.Quantity) (netlist.Band, bool) {
 func (e *evaluation) curve(q netlist.Quantity) (*Curve, error) {
 	band, ok := bandOf(q)
 	if !ok {
-		return nil, &InputError{Message: q.Info().Text + " has no range of frequencies"}
+		return nil, &InputError{Message: q.Describe().Text + " has no range of frequencies"}
 	}
 	perDecade := band.PerDecade
 	if perDecade == 0 {
 		perDecade = curvePerDecade
 	}
-	c := &Curve{Frequencies: logGrid(band.Low, band.High, perDecade), Complex: q.Info().Complex}
+	c := &Curve{Frequencies: logGrid(band.Low, band.High, perDecade), Complex: q.Describe().Complex}
 	c.Values = make([]complex128, len(c.Frequencies))
 	if _, err := e.linear(); err != nil {
 		return nil, err

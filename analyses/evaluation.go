@@ -223,7 +223,7 @@ func (e *evaluation) apply(q *netlist.Apply, p *place) (complex128, error) {
 			return cmplx.NaN(), err
 		}
 		x[i] = v
-		isComplex = isComplex || argument.Info().Complex
+		isComplex = isComplex || argument.Describe().Complex
 	}
 	v, ok := combine(q.Op, x, isComplex)
 	if !ok {

@@ -50,7 +50,7 @@ func Measure(ctx context.Context, setup *netlist.Setup, quantities ...string) ([
 	for _, q := range qs {
 		v, err := e.value(q)
 		if err != nil {
-			return nil, fmt.Errorf("%s: %w", q.Info().Text, err)
+			return nil, fmt.Errorf("%s: %w", q.Describe().Text, err)
 		}
 		values = append(values, v)
 	}
@@ -59,7 +59,7 @@ func Measure(ctx context.Context, setup *netlist.Setup, quantities ...string) ([
 
 // value computes a quantity of any shape.
 func (e *evaluation) value(q netlist.Quantity) (v Value, err error) {
-	info := q.Info()
+	info := q.Describe()
 	v = Value{Text: info.Text, Unit: info.Unit.Symbol(), Shape: info.Shape, Complex: info.Complex}
 	switch info.Shape {
 	case netlist.Word:

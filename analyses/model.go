@@ -107,11 +107,7 @@ func (m *model) hold(b *mna.Builder) error {
 		if node <= 0 {
 			continue
 		}
-		signal := devices.Scaled(e.Signal, sense)
-		if err != nil {
-			return err
-		}
-		if err := b.Hold(node, signal); err != nil {
+		if err := b.Hold(node, devices.Scaled(e.Signal, sense)); err != nil {
 			return err
 		}
 	}
@@ -129,10 +125,7 @@ func (m *model) hold(b *mna.Builder) error {
 
 // drive connects the ideal sources of an input.
 func (m *model) drive(b *mna.Builder, in *netlist.Input) error {
-	signals, err := pinSignals(in)
-	if err != nil {
-		return err
-	}
+	signals := pinSignals(in)
 	for pin, node := range in.Nodes {
 		if !in.Current {
 			if err := b.Hold(node, signals[pin]); err != nil {
@@ -148,22 +141,16 @@ func (m *model) drive(b *mna.Builder, in *netlist.Input) error {
 
 // pinSignals combines the modes of an input to what drives each of its pins: volts of the pin, or
 // amperes into the circuit there.
-func pinSignals(in *netlist.Input) ([]mna.Signal, error) {
+func pinSignals(in *netlist.Input) []mna.Signal {
 	if len(in.Nodes) == 1 {
-		return []mna.Signal{orRest(in.Single)}, nil
+		return []mna.Signal{orRest(in.Single)}
 	}
 	share := modeShare(in)
 	signals := make([]mna.Signal, 2)
 	for pin, sign := range []float64{share, -share} {
-		scaled, err := devices.Scaled(orRest(in.Differential), sign)
-		if err != nil {
-			return nil, err
-		}
-		if signals[pin], err = devices.Sum(orRest(in.Common), scaled); err != nil {
-			return nil, err
-		}
+		signals[pin] = devices.Sum(orRest(in.Common), devices.Scaled(orRest(in.Differential), sign))
 	}
-	return signals, nil
+	return signals
 }
 
 // modeShare is the share of the differential drive that each pin of a pair carries: half the

@@ -56,7 +56,7 @@ func sameAxis(a, b *Axis) bool {
 }
 
 func (e *evaluation) trace(q netlist.Quantity, points int) (*Axis, *Trace, error) {
-	info := q.Info()
+	info := q.Describe()
 	t := &Trace{Name: info.Text, Unit: info.Unit.Symbol()}
 	switch info.Shape {
 	case netlist.Waveform:
@@ -116,7 +116,7 @@ func (e *evaluation) addLimits(r *PlotResult) {
 	for i := range r.Traces {
 		t := &r.Traces[i]
 		for _, x := range e.setup.Expected {
-			if x.Quantity.Info().Text == t.Name && x.Quantity.Info().Shape != netlist.Scalar {
+			if x.Quantity.Describe().Text == t.Name && x.Quantity.Describe().Shape != netlist.Scalar {
 				t.Low, t.High = level(x.Limit.Low), level(x.Limit.High)
 			}
 		}
@@ -222,8 +222,8 @@ func (e *evaluation) ownQuantities(shape netlist.Shape) []netlist.Quantity {
 	var qs []netlist.Quantity
 	seen := map[string]bool{}
 	add := func(q netlist.Quantity) {
-		if q.Info().Shape == shape && !seen[q.Info().Text] {
-			seen[q.Info().Text] = true
+		if q.Describe().Shape == shape && !seen[q.Describe().Text] {
+			seen[q.Describe().Text] = true
 			qs = append(qs, q)
 		}
 	}
@@ -278,12 +278,12 @@ func (e *evaluation) measuredWaveforms() []netlist.Quantity {
 	qs := e.ownQuantities(netlist.Waveform)
 	seen := map[string]bool{}
 	for _, q := range qs {
-		seen[q.Info().Text] = true
+		seen[q.Describe().Text] = true
 	}
 	for _, x := range e.setup.Expected {
 		for _, q := range reduced(x.Quantity) {
-			if !seen[q.Info().Text] {
-				seen[q.Info().Text] = true
+			if !seen[q.Describe().Text] {
+				seen[q.Describe().Text] = true
 				qs = append(qs, q)
 			}
 		}

@@ -30,8 +30,8 @@ func margin(v float64, l *netlist.Limit, ratio bool) float64 {
 // decibels returns 20 log10 |x|.
 func decibels(x float64) float64 { return 20 * math.Log10(math.Abs(x)) }
 
-// holds reports whether v lies inside the limits. NaN does not.
-func holds(v float64, l *netlist.Limit) bool {
+// satisfies reports whether v lies inside the limits. NaN does not.
+func satisfies(v float64, l *netlist.Limit) bool {
 	low := v > l.Low || !l.LowOpen && v == l.Low
 	high := v < l.High || !l.HighOpen && v == l.High
 	return low && high
@@ -41,7 +41,7 @@ func holds(v float64, l *netlist.Limit) bool {
 func (e *evaluation) verdict(x *netlist.Expected) verdict {
 	v := verdict{value: math.NaN(), low: x.Limit.Low, high: x.Limit.High, margin: math.NaN()}
 	var err error
-	switch shape := x.Quantity.Info().Shape; shape {
+	switch shape := x.Quantity.Describe().Shape; shape {
 	case netlist.Word:
 		return e.wordVerdict(x)
 	case netlist.Waveform:
@@ -51,7 +51,7 @@ func (e *evaluation) verdict(x *netlist.Expected) verdict {
 	default:
 		var n complex128
 		n, err = e.number(x.Quantity, nowhere())
-		v.value = compared(n, x.Quantity.Info().Complex)
+		v.value = compared(n, x.Quantity.Describe().Complex)
 	}
 	if err == nil && math.IsNaN(v.value) {
 		err = &InputError{Message: "the result is not a number"}
@@ -61,7 +61,7 @@ func (e *evaluation) verdict(x *netlist.Expected) verdict {
 		return v
 	}
 	v.margin = margin(v.value, &x.Limit, x.Limit.Ratio)
-	if !holds(v.value, &x.Limit) {
+	if !satisfies(v.value, &x.Limit) {
 		v.status = Fail
 	}
 	return v

@@ -3,6 +3,7 @@ package netlist
 import (
 	"poise/mna"
 	"poise/netlist/syntax"
+	"poise/netlist/unit"
 )
 
 // Circuit is a flat circuit with every number evaluated for one set-up: what the
@@ -82,6 +83,8 @@ type Vary struct {
 	Values []float64 // SI
 	Unit   string    // SI unit of the values, as written in the language; "" for a number
 	Span   syntax.Span
+
+	dimension unit.Dimension
 }
 
 // Expectation is one expect statement.
@@ -109,6 +112,8 @@ type Setup struct {
 	Run      *Run // nil without a run
 	Expected []Expected
 	Plots    []Plotted
+
+	measurer *measurer
 }
 
 // Run is a transient.

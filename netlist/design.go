@@ -3,13 +3,18 @@
 package netlist
 
 import (
-	"io/fs"
+	"fmt"
+	"slices"
 
+	"poise/devices"
 	"poise/netlist/syntax"
 )
 
 // Diagnostic is one problem of a file at its place.
 type Diagnostic = syntax.Diagnostic
+
+// DiagnosticList is what is wrong with a file, in source order.
+type DiagnosticList = syntax.DiagnosticList
 
 // Design is a loaded and fully checked file. It is immutable and safe for several goroutines.
 type Design struct {
@@ -20,19 +25,83 @@ type Design struct {
 	Benches  []*Bench
 	Warnings []*Diagnostic
 
-	// resolver's own fields follow
+	program *program
 }
 
-// Contract between this package and the ones above it:
-//
-//	Load(fsys fs.FS, path string, opts ...Option) (*Design, error)   error is a DiagnosticList
-//	WithFamilies(families ...devices.Family) Option; WithLimits(Limits) Option
-//	(*Design).Circuit() (*Circuit, error)                            the file as written, no bench
-//	(*Design).Bench(name string) *Bench                              nil if there is none
-//	(*Bench).Setup(point []float64) (*Setup, error)                  point: one value for each Vary, SI
-//	(*Design).Setup() (*Setup, error)                                the circuit as written as a set-up without expectations
-//	(*Setup).Quantity(text string) (Quantity, error)                 resolves one quantity written in the language for this set-up (the command's --quantity)
-//	(*Design).Families() []devices.Family
-//	Format(name, src string) (string, error)
-//	Metrics(), Reducers()                                            catalogue of names, meanings, dimensions
-var _ fs.FS
+// Bench returns the bench of a name, nil if there is none.
+func (d *Design) Bench(name string) *Bench {
+	i := slices.IndexFunc(d.Benches, func(b *Bench) bool { return b.Name == name })
+	if i < 0 {
+		return nil
+	}
+	return d.Benches[i]
+}
+
+// Families returns the families of devices that the design was loaded with.
+func (d *Design) Families() []devices.Family { return slices.Clone(d.program.families) }
+
+// Setup returns the circuit as written, as a set-up without run and expectations: inputs are driven by 0.
+// The error is a DiagnosticList.
+func (d *Design) Setup() (*Setup, error) {
+	e := d.program.reading().elaborate(nil, false)
+	if err := e.list.Sort().Err(); err != nil {
+		return nil, err
+	}
+	s := &Setup{Circuit: e.circuit}
+	s.measurer = &measurer{e: e, scope: e.file.scope}
+	return s, nil
+}
+
+// Circuit returns the flat circuit as written. The error is a DiagnosticList.
+func (d *Design) Circuit() (*Circuit, error) {
+	s, err := d.Setup()
+	if err != nil {
+		return nil, err
+	}
+	return s.Circuit, nil
+}
+
+// Setup evaluates the bench at one point of its grid: a value in SI units for each axis of Vary, in order. The error is a
+// DiagnosticList, for instance if a value leaves its physical range there.
+func (b *Bench) Setup(point []float64) (*Setup, error) {
+	if len(point) != len(b.Vary) {
+		return nil, fmt.Errorf("the grid of the bench %s has %d axes, not %d", b.Name, len(b.Vary), len(point))
+	}
+	f := b.design.program.reading().setup(b, point)
+	if err := f.e.list.Sort().Err(); err != nil {
+		return nil, err
+	}
+	return f.setup, nil
+}
+
+// Quantity resolves a quantity written in the language for this set-up. The error is a DiagnosticList.
+func (s *Setup) Quantity(text string) (Quantity, error) {
+	const name = "quantity"
+	x, list := syntax.ParseQuantity(name, text)
+	if err := list.Err(); err != nil {
+		return nil, err
+	}
+	e := *s.measurer.e
+	e.list = nil
+	p := *e.program
+	p.sources = map[string]string{name: text}
+	e.program = &p
+	m := *s.measurer
+	m.e = &e
+	q, ok := m.quantity(x)
+	if !ok {
+		return nil, e.list.Sort().Err()
+	}
+	return q, nil
+}
+
+// reading returns a view of the program for one elaboration: what is only noted while a file is checked is apart.
+func (p *program) reading() *program {
+	q := *p
+	q.used = map[string]bool{}
+	q.list = nil
+	return &q
+}
+
+// Format writes a file in the one form that all files share. A text with syntax errors comes back unchanged, with a DiagnosticList.
+func Format(name, src string) (string, error) { return syntax.Format(name, src) }

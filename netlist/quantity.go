@@ -19,8 +19,8 @@ const (
 // left side of an expectation, an entry of a plot. It is one of the types below.
 // Names are full names in the flat circuit (A1.x), "gnd" for the reference.
 type Quantity interface {
-	// Info returns what is common to all quantities.
-	Info() Info
+	// Describe returns what is common to all quantities.
+	Describe() Info
 }
 
 // Info is what is known of a quantity before it is computed.
@@ -32,8 +32,8 @@ type Info struct {
 	Complex bool // value is complex (a gain, an impedance)
 }
 
-// Info returns i itself, so that embedding types are quantities.
-func (i Info) Info() Info { return i }
+// Describe returns i itself, so that embedding types are quantities.
+func (i Info) Describe() Info { return i }
 
 // Band says at which frequencies a metric is wanted, in Hz.
 type Band struct {
@@ -81,9 +81,9 @@ type (
 		Name   string
 		Input  string // port name, "" if the metric needs none
 		Output string
-		Rail   string // of psrr
-		From   string // of gain: a source, a rail, or a port
-		Mode   string // of gain from a port: differential, common, signal
+		Rail   string   // of psrr
+		From   string   // of gain: a source, a rail, or a port
+		Mode   string   // of gain from a port: differential, common, signal
 		To     Quantity // of gain: Volts or Amps
 		Band   Band
 	}
