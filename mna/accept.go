@@ -8,9 +8,12 @@ import (
 const (
 	// balanceShare bounds the sum of the currents of a node against the sum of their magnitudes in an accepted answer.
 	balanceShare = 1e-12
-	// rounding is how far rounding of the unknowns may move a current: each is the product of a derivative and an unknown
-	// that is known to half of its last bit, and the sum rounds once more for every term.
-	rounding = 4 * 0x1p-52
+	// rounding is how far rounding may move a current: each is the product of a derivative and an unknown that is known to half of
+	// its last bit, the sum rounds once more for every term, and so does the elimination that the last update comes from.
+	rounding = 16 * 0x1p-52
+	// What is left may always be as small as this: the inner differences of a device round too.
+	balanceCurrent = 1e-19 // A
+	balanceVoltage = 1e-15 // V
 	// polishIterations may follow where Newton's method has settled but the currents do not balance yet.
 	polishIterations = 4
 )
@@ -54,7 +57,11 @@ func (c *climb) balance() error {
 	w := c.w
 	size := c.magnitudes()
 	for i := c.s.first(); i < len(size); i++ {
-		if !(math.Abs(w.residual[i]) <= size[i]+math.SmallestNonzeroFloat64) {
+		floor := balanceCurrent
+		if c.s.branch[i] {
+			floor = balanceVoltage
+		}
+		if !(math.Abs(w.residual[i]) <= size[i]+floor) {
 			return &balanceError{c.s.names[i], w.residual[i], size[i]}
 		}
 	}
@@ -83,6 +90,9 @@ func (c *climb) magnitudes() []float64 {
 			size[u] += balanceShare * term
 			e.F[u], e.Q[u] = 0, 0
 		}
+	}
+	for i, q := range c.base.charge {
+		size[i] += balanceShare * math.Abs(c.base.alpha*q)
 	}
 	for i, v := range c.base.constant {
 		size[i] += balanceShare * math.Abs(v)

@@ -4,7 +4,9 @@ import "math"
 
 const (
 	// stageIterations bounds Newton's method within a stage; a step that needs more is too long.
-	stageIterations = 12
+	stageIterations = 20
+	// restlessIterations may pass before an update that grows is taken for divergence: junctions turn on and off at first.
+	restlessIterations = 4
 	// stageShare is the share of the allowed error that the iteration may leave.
 	stageShare = 0.02
 	// curvatureFrom is the size of an update beside the allowed error from which on its successor tells the curvature rather than
@@ -39,7 +41,7 @@ func (n *stageNewton) solve(p *problem) error {
 	w.eval.Limit = true
 	last := 0.0
 	n.age++
-	for range stageIterations {
+	for i := range stageIterations {
 		if err := w.step(p); err != nil {
 			return err
 		}
@@ -63,7 +65,7 @@ func (n *stageNewton) solve(p *problem) error {
 			w.carry()
 			return nil
 		}
-		if last > 0 && size > 2*last {
+		if i >= restlessIterations && last > 0 && size > 2*last {
 			return errDiverged
 		}
 		last = size

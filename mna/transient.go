@@ -23,6 +23,7 @@ type TransientStats struct {
 	Steps          int // accepted
 	Rejected       int // for their error
 	NewtonFailures int // steps shortened because Newton's method failed
+	Unresolved     int // steps too short to be refused for their error: jumps, as far as times can be told apart
 	Restarts       int // at corners of signals, the start included
 	Work           Work
 }
@@ -51,8 +52,9 @@ const (
 	firstPerScale = 200
 	// leastSteps is the least number of steps of a whole run.
 	leastSteps = 50
-	// leastShare bounds steps from below, as a share of the whole time.
-	leastShare = 1e-15
+	// leastShare bounds steps from below, as a share of the whole time: near time 0, where a cold circuit may do things of any
+	// speed, numbers tell apart far shorter times.
+	leastShare = 1e-21
 	// leastBits is the shortest step in last bits of the time.
 	leastBits = 16
 )
@@ -122,7 +124,9 @@ type integration struct {
 	h      float64 // s, the step to try
 	corner float64 // s, the next corner
 
-	refused refusal // the first step refused since the last accepted one
+	first float64 // s, the step that was tried first after the last corner
+	blind float64 // s, the length of the next step whose error is not asked for, after one of that kind
+	step  Step
 }
 
 // method is an implicit integration method. It keeps what it needs of the past.
@@ -170,6 +174,7 @@ func newIntegration(ctx context.Context, s *System, o TransientOptions) *integra
 		o.Logger = slog.New(slog.DiscardHandler)
 	}
 	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger, resolution: newResolution(s, o.Accuracy, trbdf2Order)}
+	r.step.r = r
 	r.method = newTRBDF2(r)
 	return r
 }
@@ -192,7 +197,8 @@ func (r *integration) run(sink func(*Step) error) error {
 		}
 		r.stats.Steps++
 		r.widen(r.method.end().x)
-		if err := sink(&Step{T0: start, T1: r.t, r: r}); err != nil {
+		r.step.T0, r.step.T1 = start, r.t
+		if err := sink(&r.step); err != nil {
 			return err
 		}
 		if r.t >= r.corner && r.t < r.o.Until {
@@ -220,41 +226,46 @@ func (r *integration) try() (bool, error) {
 		}
 		return false, nil
 	}
-	ratio, worst, next := r.method.judge()
-	r.worst, r.h = worst, next
-	if !(ratio <= 1) && !r.stubborn(ratio, end-r.t) {
+	if !r.good(end - r.t) {
 		r.stats.Rejected++
 		return false, nil
 	}
-	r.refused = refusal{}
 	r.method.accept()
 	r.t, r.since = end, end
 	return true, nil
 }
 
+// good judges the attempted step of the given length in s.
+func (r *integration) good(length float64) bool {
+	ratio, worst, next := r.method.judge()
+	r.worst, r.h = worst, next
+	switch {
+	case ratio <= 1:
+		r.blind = 0
+		return true
+	case length > r.finest() || math.IsInf(ratio, 1):
+		return false
+	}
+	r.stats.Unresolved++
+	r.blind = 4 * length
+	r.h = r.blind
+	return true
+}
+
 const (
-	// stubbornShrink is the ratio of two steps over which an error must fall, or it is none of the step.
-	stubbornShrink = 1e-6
-	// stubbornFirst is the same right after a restart, where steps are short from the start.
-	stubbornFirst = 1e-3
-	// stubbornRatio is the ratio of the errors from which on they do not fall.
-	stubbornRatio = 0.5
+	// finestShare is the length of steps, as a share of the whole time, below which nothing is resolved any more.
+	finestShare = 1e-12
+	// finestFirst bounds it as a share of the first step after the last corner.
+	finestFirst = 1e-6
+	// finestMost bounds what they may grow to, as a share of the same.
+	finestMost = 1e-3
 )
 
-// refusal is the first of a row of refused steps.
-type refusal struct{ ratio, length float64 }
-
-// stubborn reports whether the error has not fallen while the step was made shorter and shorter: it was there before (a slope that rounding spoilt at a
-// corner), and an L-stable method loses it with the next step.
-func (r *integration) stubborn(ratio, length float64) bool {
-	if r.refused.length == 0 {
-		r.refused = refusal{ratio, length}
-	}
-	shrink := stubbornShrink
-	if r.since < r.t {
-		shrink = stubbornFirst
-	}
-	return length <= shrink*r.refused.length && ratio >= stubbornRatio*r.refused.ratio && !math.IsInf(ratio, 1)
+// finest is the length in s of steps whose error is not asked for (it grows while such steps follow each other: what does not end is no jump but rounding): what happens within one is a jump to anything that looks at the run. Ideal parts do
+// such things (a junction without depletion charge, the moment its stored charge is gone), and a slope that rounding spoilt at a corner looks like one.
+func (r *integration) finest() float64 {
+	finest := math.Max(math.Min(finestShare*r.o.Until, finestFirst*r.first), 4*r.shortest())
+	return math.Max(finest, math.Min(r.blind, finestMost*r.first))
 }
 
 // shortest is the length in s of the shortest step from the present time.

@@ -65,8 +65,8 @@ func (m *trbdf2) attempt(end float64) error {
 	a, b, x := &m.start, &m.middle, m.r.w.eval.X
 	m.h = end - a.t
 	alpha := 1 / (share * m.h)
-	for i := range m.constant {
-		m.constant[i] = -alpha*a.q[i] - a.rate[i]
+	for i, rate := range a.rate {
+		m.constant[i] = -rate
 	}
 	t := a.t + gamma*m.h
 	if m.steps > 0 {
@@ -77,8 +77,8 @@ func (m *trbdf2) attempt(end float64) error {
 	if err := m.stage(b, t, alpha); err != nil {
 		return err
 	}
-	for i := range m.constant {
-		m.constant[i] = -alpha * (a.q[i] + m.h*earlier*(a.rate[i]+b.rate[i]))
+	for i, rate := range a.rate {
+		m.constant[i] = -earlier / share * (rate + b.rate[i])
 	}
 	if m.steps > 0 {
 		blend(x, end, &m.earlierStart, &m.earlierMiddle, a, b)
@@ -88,9 +88,9 @@ func (m *trbdf2) attempt(end float64) error {
 	return m.stage(&m.finish, end, alpha)
 }
 
-// stage solves f + alpha q + constant = 0 at time t in s, from the prediction in the workspace.
+// stage solves f + constant + alpha (q - q(start)) = 0 at time t in s, from the prediction in the workspace.
 func (m *trbdf2) stage(p *point, t, alpha float64) error {
-	problem := problem{time: m.r.inside(t), drive: 1, alpha: alpha, constant: m.constant}
+	problem := problem{time: m.r.inside(t), drive: 1, alpha: alpha, constant: m.constant, charge: m.start.q}
 	if err := m.newton.solve(&problem); err != nil {
 		return err
 	}

@@ -8,14 +8,16 @@ import (
 
 // problem is a system of equations to be solved by Newton's method:
 //
-//	f(x, t) + alpha q(x, t) + constant + shunt (x - anchor) = 0
+//	f(x, t) + constant + alpha (q(x, t) - charge) + shunt (x - anchor) = 0
 //
-// A bias has alpha = 0 and no constant; a stage of an implicit integration method has both.
+// A bias has alpha = 0; a stage of an implicit integration method has the rest. The difference of the charges is taken before anything is added to it:
+// over a short step it is a small difference of large numbers, beside which currents would lose their last digits.
 type problem struct {
 	time     float64   // s
 	drive    float64   // of all independent sources, 0..1
 	alpha    float64   // 1/s
-	constant []float64 // by unknown, nil if none
+	constant []float64 // A, by unknown, nil if none
+	charge   []float64 // C, by unknown, nil if none
 	cold     bool
 	// shunt is a conductance in S from every free node to its anchor (nil: ground). It is 0 in an accepted answer.
 	shunt  float64
@@ -81,19 +83,31 @@ func (w *workspace) assemble(p *problem) {
 	e := &w.eval
 	copy(w.residual, e.F)
 	copy(w.jacobian, e.G)
+	for i, c := range p.constant {
+		w.residual[i] += c
+	}
 	if p.alpha != 0 {
-		for i, q := range e.Q {
-			w.residual[i] += p.alpha * q
-		}
+		w.addRates(p)
 		for k, c := range e.C {
 			w.jacobian[k] += p.alpha * c
 		}
 	}
-	for i, c := range p.constant {
-		w.residual[i] += c
-	}
 	if p.shunt != 0 {
 		w.addShunt(p)
+	}
+}
+
+// addRates adds the rates of the charges to the residual.
+func (w *workspace) addRates(p *problem) {
+	q := w.eval.Q
+	if p.charge == nil {
+		for i, v := range q {
+			w.residual[i] += p.alpha * v
+		}
+		return
+	}
+	for i, from := range p.charge {
+		w.residual[i] += p.alpha * (q[i] - from)
 	}
 }
 
