@@ -71,9 +71,11 @@ func (l *linear) Corner(t float64) float64 {
 		return l.start
 	}
 	u, base := l.local(t)
-	for round := 0; round < 3; round++ {
-		for i := sort.SearchFloat64s(l.t, u); i < len(l.t); i++ {
-			if c := base + l.t[i]; c > t {
+	// A corner just met must not be met again one rounding later.
+	least := t + cornerRounding*(math.Abs(t)+l.period)
+	for range 3 {
+		for i := sort.SearchFloat64s(l.t, u-cornerRounding*l.period); i < len(l.t); i++ {
+			if c := base + l.t[i]; c > least {
 				return c
 			}
 		}
@@ -86,13 +88,16 @@ func (l *linear) Corner(t float64) float64 {
 	return inf
 }
 
+// cornerRounding is the share of a time within which two corners are one: a few roundings of sums of periods.
+const cornerRounding = 1e-14
+
 // Scale returns the length of the straight piece at t, in which nothing changes until the next corner.
 func (l *linear) Scale(t float64) float64 {
 	c := l.Corner(t)
 	if math.IsInf(c, 1) {
 		return inf
 	}
-	u, _ := l.local(t)
+	u, _ := l.local(t + (c-t)/2)
 	i := sort.Search(len(l.t), func(i int) bool { return l.t[i] > u })
 	if l.period == 0 && (i == 0 || i == len(l.t)) {
 		return inf

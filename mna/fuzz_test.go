@@ -180,7 +180,7 @@ func denseEquations(s *System) (*mat.Dense, *mat.VecDense, int) {
 // TestRandomTransients runs random nonlinear networks under a sine and a pulse, from rest and cold, and compares the default
 // accuracy with a run ten times as accurate.
 func TestRandomTransients(t *testing.T) {
-	const networks, until, looked = 60, 2e-3, 97
+	const networks, until, looked = 400, 2e-3, 97
 	// A run returns samples and the swing of every unknown over all of its steps.
 	run := func(s *System, o TransientOptions) (samples [][]float64, swing []float64, stats *TransientStats, err error) {
 		o.Until = until

@@ -3,10 +3,9 @@ package mna
 import "math"
 
 const (
-	// stageIterations bounds Newton's method within a stage; a step that needs more is too long.
-	stageIterations = 20
-	// restlessIterations may pass before an update that grows is taken for divergence: junctions turn on and off at first.
-	restlessIterations = 4
+	// stageIterations bounds Newton's method within a stage; a step that needs more is too long. A junction that turns off may take one iteration for
+	// every thermal voltage.
+	stageIterations = 50
 	// stageShare is the share of the allowed error that the iteration may leave.
 	stageShare = 0.02
 	// curvatureFrom is the size of an update beside the allowed error from which on its successor tells the curvature rather than
@@ -41,7 +40,7 @@ func (n *stageNewton) solve(p *problem) error {
 	w.eval.Limit = true
 	last := 0.0
 	n.age++
-	for i := range stageIterations {
+	for range stageIterations {
 		if err := w.step(p); err != nil {
 			return err
 		}
@@ -65,9 +64,6 @@ func (n *stageNewton) solve(p *problem) error {
 			w.carry()
 			return nil
 		}
-		if i >= restlessIterations && last > 0 && size > 2*last {
-			return errDiverged
-		}
 		last = size
 	}
 	return errSlow
@@ -80,6 +76,9 @@ func (n *stageNewton) leaves(size float64) float64 { return n.curvature * size *
 func (n *stageNewton) trusts(size float64) bool {
 	return n.age < curvatureLife && size <= curvatureReach*n.reach
 }
+
+// forget makes the next stage learn the curvature anew: something has happened that it does not know.
+func (n *stageNewton) forget() { n.curvature, n.reach, n.age = math.Inf(1), 0, 0 }
 
 func (n *stageNewton) learn(curvature, size float64) {
 	if n.curvature > curvature && !math.IsInf(n.curvature, 1) {

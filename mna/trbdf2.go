@@ -35,7 +35,8 @@ type trbdf2 struct {
 	// them back by one step, after which the last step runs over earlierStart, earlierMiddle and start, and middle is the one before.
 	earlierStart, earlierMiddle point
 	start, middle, finish       point
-	steps                       int // since the restart
+	steps                       int  // since the restart
+	open                        bool // an attempt that was not accepted
 
 	h float64 // s, of the step attempted
 }
@@ -43,7 +44,7 @@ type trbdf2 struct {
 func newTRBDF2(r *integration) *trbdf2 {
 	s, free := r.s, len(r.s.names)-r.s.first()
 	return &trbdf2{
-		r: r, control: newControl(trbdf2Order + 1), newton: stageNewton{r: r, curvature: math.Inf(1)}, constant: make([]float64, len(s.names)),
+		r: r, control: newControl(trbdf2Order + 1), newton: stageNewton{r: r}, constant: make([]float64, len(s.names)),
 		whole: make([]float64, free), left: make([]float64, free), noise: make([]float64, free),
 		earlierStart: s.newPoint(), earlierMiddle: s.newPoint(), start: s.newPoint(), middle: s.newPoint(), finish: s.newPoint(),
 	}
@@ -56,6 +57,7 @@ func (m *trbdf2) restart(from *point) {
 	copy(m.start.rate, from.rate)
 	m.steps = 0
 	m.control.restart()
+	m.newton.forget()
 }
 
 func (m *trbdf2) end() *point { return &m.start }
@@ -63,6 +65,10 @@ func (m *trbdf2) end() *point { return &m.start }
 // attempt solves both stages of the step to end, in s.
 func (m *trbdf2) attempt(end float64) error {
 	a, b, x := &m.start, &m.middle, m.r.w.eval.X
+	if m.open {
+		m.newton.forget()
+	}
+	m.open = true
 	m.h = end - a.t
 	alpha := 1 / (share * m.h)
 	for i, rate := range a.rate {
@@ -235,6 +241,7 @@ func (b *bending) of(m *trbdf2, k int) float64 {
 
 func (m *trbdf2) accept() {
 	m.control.accept()
+	m.open = false
 	m.earlierStart, m.start, m.finish = m.start, m.finish, m.earlierStart
 	m.earlierMiddle, m.middle = m.middle, m.earlierMiddle
 	m.steps++
