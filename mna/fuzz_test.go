@@ -43,11 +43,15 @@ func tangle(t testing.TB, r *rand.Rand, linear bool) *net {
 			n.add(label, capacitor{spread(-12, -6), r.Float64()}, name(), name())
 		case kind == 6:
 			n.add(label, npn{spread(-17, -13), 0.0258, 50 + 300*r.Float64(), 1 + r.Float64(), 1e-9}, label+"c", label+"b", label+"e")
+			n.add("Cbe"+label, capacitor{spread(-13, -10), 0}, label+"b", label+"e")
+			n.add("Cbc"+label, capacitor{spread(-13, -11), 0}, label+"b", label+"c")
 			for _, pin := range []string{"c", "b", "e"} {
 				n.add("R"+label+pin, resistor(spread(-1, 3)), label+pin, name())
 			}
 		default:
-			n.add(label, junction{spread(-16, -9), 0.02 + 0.03*r.Float64(), 1e-9}, label+"a", name())
+			n.add(label, junction{spread(-16, -9), 0.02 + 0.03*r.Float64(), 1e-9}, label+"a", label+"k")
+			n.add("Cak"+label, capacitor{spread(-13, -10), 0}, label+"a", label+"k")
+			n.add("Rk"+label, resistor(spread(-1, 2)), label+"k", name())
 			n.add("R"+label, resistor(spread(-1, 2)), label+"a", name())
 		}
 	}
@@ -180,7 +184,7 @@ func denseEquations(s *System) (*mat.Dense, *mat.VecDense, int) {
 // TestRandomTransients runs random nonlinear networks under a sine and a pulse, from rest and cold, and compares the default
 // accuracy with a run ten times as accurate.
 func TestRandomTransients(t *testing.T) {
-	const networks, until, looked = 400, 2e-3, 97
+	const networks, until, looked = 60, 2e-3, 97
 	// A run returns samples and the swing of every unknown over all of its steps.
 	run := func(s *System, o TransientOptions) (samples [][]float64, swing []float64, stats *TransientStats, err error) {
 		o.Until = until

@@ -91,6 +91,7 @@ func (w *workspace) newton(ctx context.Context, p *problem, most int) (int, erro
 		case a.small, a.move <= stallShare && a.move >= stallRatio*last:
 			return i, nil
 		}
+		w.repivot = !e.Limited && a.move > stallRatio*last
 		last = a.move
 	}
 	return most, errSlow

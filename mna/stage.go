@@ -64,6 +64,7 @@ func (n *stageNewton) solve(p *problem) error {
 			w.carry()
 			return nil
 		}
+		w.repivot = last > 0 && size > stallRatio*last
 		last = size
 	}
 	return errSlow
@@ -78,7 +79,10 @@ func (n *stageNewton) trusts(size float64) bool {
 }
 
 // forget makes the next stage learn the curvature anew: something has happened that it does not know.
-func (n *stageNewton) forget() { n.curvature, n.reach, n.age = math.Inf(1), 0, 0 }
+func (n *stageNewton) forget() {
+	n.curvature, n.reach, n.age = math.Inf(1), 0, 0
+	n.r.w.repivot = true
+}
 
 func (n *stageNewton) learn(curvature, size float64) {
 	if n.curvature > curvature && !math.IsInf(n.curvature, 1) {

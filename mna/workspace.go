@@ -33,6 +33,7 @@ type workspace struct {
 	lu       *sparse.LU[float64]
 	update   []float64 // of the free unknowns
 	trial    []float64 // by unknown
+	repivot  bool      // look for new pivots at the next factorisation
 	work     Work
 }
 
@@ -130,7 +131,12 @@ func (w *workspace) addShunt(p *problem) {
 // factor factors the Jacobian. It returns *SingularError.
 func (w *workspace) factor() error {
 	w.work.Factorisations++
-	if err := w.lu.Refactor(w.jacobian); err != nil {
+	refactor := w.lu.Refactor
+	if w.repivot {
+		// Pivots that were chosen for other numbers may still be large enough to go on with, but cost digits.
+		refactor, w.repivot = w.lu.Factor, false
+	}
+	if err := refactor(w.jacobian); err != nil {
 		return w.sys.explain(err)
 	}
 	return nil

@@ -11,219 +11,244 @@ import (
 // LiteralError says what is wrong with a number or a unit.
 type LiteralError struct {
 	Text string // the part that is wrong
-	Want string
+	Want string // what is wrong with it: "is not a unit"
 	Hint string // what was meant perhaps, may be empty
 }
 
 func (e *LiteralError) Error() string {
-	s := fmt.Sprintf("%q: %s", e.Text, e.Want)
+	s := fmt.Sprintf("`%s` %s", e.Text, e.Want)
 	if e.Hint != "" {
 		s += " (" + e.Hint + ")"
 	}
 	return s
 }
 
+const (
+	notNumber   = "is not a number"
+	outOfRange  = "is outside what a number can hold"
+	needsUnit   = "needs a unit behind its prefix"
+	standsAlone = "stands alone: it takes no power and no quotient"
+)
+
 // ZeroCelsius is 0 degC in K.
 const ZeroCelsius = 273.15
 
-// Parse reads a number with its unit as the language writes it: 39kohm, 4k7ohm, 0R5, -40degC, 3.2nV/rtHz, 20mVpp, 47. The letter
-// of a prefix may stand for the decimal point, and R for that of a resistance (IEC 60062:2016, clause 4). A
-// sign belongs to the literal, so that -40degC is 233.15 K and -6dB is 0.501. It returns *LiteralError.
+// Parse reads a number with its unit as the language writes it: 39kohm, 4k7ohm, 0R5, -40degC, 3.2nV/rtHz, 20mVpp, 47. There is no
+// blank between number and unit.
+//
+// The letter of a prefix may stand for the decimal point, and R for that of a resistance (IEC 60062:2016, clause 4): 4k7ohm, 2n2F,
+// 0R5. Only R names its unit; 4k7 and 4k are errors, since a bare number has no dimension.
+// A sign belongs to the literal: -40degC is 233.15 K, -6dB is 0.501. degC is an absolute temperature. m, k and the other letters
+// are prefixes only before a unit that takes them, and a unit as it stands goes before a prefix with a unit: none of
+// the language's units can be read both ways.
+//
+// The result is the float64 nearest to the written value wherever the scale is a power of ten. Errors are *LiteralError.
 func Parse(text string) (Value, error) {
-	rest := normal(text)
-	digits, unit := splitNumber(rest)
-	if digits == "" || digits == "-" || digits == "+" {
-		return Value{}, &LiteralError{Text: text, Want: "want a number"}
+	mantissa, exponent, tail := splitNumber(normal(text))
+	if strings.Trim(mantissa, "+-") == "" {
+		return Value{}, &LiteralError{Text: text, Want: notNumber}
 	}
-	number, err := strconv.ParseFloat(digits, 64)
-	if err != nil {
-		return Value{}, &LiteralError{Text: digits, Want: "want a number that can be represented"}
+	if fraction, scale, name, ok, err := pointLetter(text, mantissa, exponent, tail); err != nil {
+		return Value{}, err
+	} else if ok {
+		mantissa, exponent, tail = mantissa+"."+fraction+"0", "", name
+		return scaled(text, mantissa, exponent, scale, tail)
 	}
-	if v, ok, err := parseCode(digits, unit); ok || err != nil {
-		return v, err
-	}
-	u, err := ParseUnit(unit)
+	return scaled(text, mantissa, exponent, 0, tail)
+}
+
+// scaled returns mantissa times 10^(exponent + shift) of a unit in SI.
+func scaled(text, mantissa, exponent string, shift int, name string) (Value, error) {
+	s, err := parseUnit(name)
 	if err != nil {
 		return Value{}, err
 	}
-	switch unit {
-	case "degC":
-		u.SI = number + ZeroCelsius
-	case "dB":
-		u.SI, u.Ratio = math.Pow(10, number/20), true
+	if s.scaling == linear {
+		shift += s.exponent
+	}
+	x, err := decimal(mantissa, exponent, shift)
+	if err != nil {
+		return Value{}, &LiteralError{Text: text, Want: outOfRange}
+	}
+	v := Value{Dimension: s.dimension, Crest: s.crest}
+	switch s.scaling {
+	case celsius:
+		v.SI = x + ZeroCelsius
+	case decibel:
+		v.SI, v.Ratio = math.Pow(10, x/20), true
 	default:
-		u.SI *= number
+		v.SI = x * s.factor
 	}
-	if math.IsInf(u.SI, 0) {
-		return Value{}, &LiteralError{Text: text, Want: "want a number that can be represented"}
-	}
-	return u, nil
-}
-
-// splitNumber cuts a literal behind its digits, exponent included.
-func splitNumber(text string) (digits, unit string) {
-	i := 0
-	if i < len(text) && (text[i] == '-' || text[i] == '+') {
-		i++
-	}
-	isDigit := func(k int) bool { return k < len(text) && text[k] >= '0' && text[k] <= '9' }
-	for isDigit(i) {
-		i++
-	}
-	if i < len(text) && text[i] == '.' && isDigit(i+1) {
-		for i++; isDigit(i); i++ {
-		}
-	}
-	if i > 0 && i < len(text) && (text[i] == 'e' || text[i] == 'E') {
-		k := i + 1
-		if k < len(text) && (text[k] == '-' || text[k] == '+') {
-			k++
-		}
-		if isDigit(k) {
-			for i = k; isDigit(i); i++ {
-			}
-		}
-	}
-	return text[:i], text[i:]
-}
-
-// parseCode reads a value code in which a letter stands for the decimal point: 4k7ohm, 2n2F, 0R5, 4R7ohm.
-func parseCode(digits, unit string) (Value, bool, error) {
-	letter, size := utf8.DecodeRuneInString(unit)
-	if size == 0 {
-		return Value{}, false, nil
-	}
-	rest := unit[size:]
-	fraction := rest[:len(rest)-len(strings.TrimLeft(rest, "0123456789"))]
-	name := rest[len(fraction):]
-	scale, isPrefix := prefixes[letter]
-	switch {
-	case letter == 'R' && (fraction != "" || name == "" || name == "ohm" || name == "Ω"):
-		if name != "" && name != "ohm" && name != "Ω" {
-			return Value{}, false, &LiteralError{Text: digits + unit, Want: "R marks ohms; no other unit may follow"}
-		}
-		scale, name = 1, "ohm"
-	case !isPrefix || fraction == "":
-		return Value{}, false, nil
-	}
-	if strings.ContainsAny(digits, ".eE") {
-		return Value{}, false, &LiteralError{Text: digits + unit, Want: fmt.Sprintf("the letter %c already stands for the decimal point", letter)}
-	}
-	u, err := ParseUnit(name)
-	if err != nil {
-		return Value{}, false, err
-	}
-	if name == "" {
-		return Value{}, false, &LiteralError{Text: digits + unit, Want: "a prefix needs a unit behind it", Hint: fmt.Sprintf("did you mean %s%sohm?", digits, unit)}
-	}
-	number, err := strconv.ParseFloat(digits+"."+fraction+"0", 64)
-	if err != nil {
-		return Value{}, false, &LiteralError{Text: digits + unit, Want: "want a number that can be represented"}
-	}
-	u.SI *= number * scale
-	return u, true, nil
-}
-
-// ParseUnit reads a unit alone, with a prefix on its numerator or without: nV/rtHz, A/V^2, ohm, V^0.5, 1/V, "". The value is the unit
-// in SI. It returns *LiteralError.
-func ParseUnit(text string) (Value, error) {
-	text = normal(text)
-	if text == "" {
-		return Value{SI: 1}, nil
-	}
-	above, below, quotient := strings.Cut(text, "/")
-	v, err := parsePower(above, true)
-	if (above == "1" || above == "") && quotient {
-		v, err = Value{SI: 1}, nil
-	}
-	if err != nil {
-		return Value{}, err
-	}
-	if !quotient {
-		return v, nil
-	}
-	w, err := parseBelow(below)
-	if err != nil {
-		return Value{}, err
-	}
-	v.SI /= w.SI
-	v.Dimension = v.Dimension.Div(w.Dimension)
-	if v.Crest != Plain {
-		return Value{}, &LiteralError{Text: text, Want: "an amplitude unit stands alone"}
+	if math.IsInf(v.SI, 0) {
+		return Value{}, &LiteralError{Text: text, Want: outOfRange}
 	}
 	return v, nil
 }
 
-// parseBelow reads what stands under the stroke.
-func parseBelow(text string) (Value, error) {
-	if text == "rtHz" {
-		return Value{SI: 1, Dimension: Frequency.root()}, nil
+// decimal returns mantissa times 10^(exponent + shift), rounded once. A number that is not 0 and rounds to it is an error.
+func decimal(mantissa, exponent string, shift int) (float64, error) {
+	e := 0
+	if exponent != "" {
+		var err error
+		if e, err = strconv.Atoi(exponent); err != nil {
+			return 0, err
+		}
 	}
-	return parsePower(text, text == "us" || text == "ms" || text == "ns")
+	x, err := strconv.ParseFloat(fmt.Sprintf("%se%d", mantissa, e+shift), 64)
+	if err == nil && x == 0 && strings.ContainsAny(mantissa, "123456789") {
+		err = strconv.ErrRange
+	}
+	return x, err
+}
+
+// splitNumber cuts a literal into its mantissa with the sign, its exponent of ten without the letter, and what follows.
+func splitNumber(text string) (mantissa, exponent, tail string) {
+	i := 0
+	if i < len(text) && (text[i] == '-' || text[i] == '+') {
+		i++
+	}
+	first := i
+	i = pastDigits(text, i)
+	if i > first && i < len(text) && text[i] == '.' && pastDigits(text, i+1) > i+1 {
+		i = pastDigits(text, i+1)
+	}
+	mantissa, tail = text[:i], text[i:]
+	if i == first || tail == "" || (tail[0] != 'e' && tail[0] != 'E') {
+		return mantissa, "", tail
+	}
+	k := 1
+	if k < len(tail) && (tail[k] == '-' || tail[k] == '+') {
+		k++
+	}
+	if end := pastDigits(tail, k); end > k {
+		return mantissa, tail[1:end], tail[end:]
+	}
+	return mantissa, "", tail
+}
+
+func pastDigits(text string, i int) int {
+	for i < len(text) && text[i] >= '0' && text[i] <= '9' {
+		i++
+	}
+	return i
+}
+
+// pointLetter reads the rest of a value code in which a letter stands for the decimal point: the k7ohm of 4k7ohm, the R5 of 0R5.
+func pointLetter(text, mantissa, exponent, tail string) (fraction string, shift int, name string, ok bool, err error) {
+	letter, size := utf8.DecodeRuneInString(tail)
+	if size == 0 {
+		return "", 0, "", false, nil
+	}
+	rest := tail[size:]
+	end := pastDigits(rest, 0)
+	fraction, name = rest[:end], rest[end:]
+	shift, isPrefix := prefix(letter)
+	switch {
+	case letter == 'R' && (fraction != "" || name == "" || name == "ohm" || name == "Ω"):
+		if name != "" && name != "ohm" && name != "Ω" {
+			return "", 0, "", false, &LiteralError{Text: text, Want: "has R for the point of a value in ohms; no other unit may follow"}
+		}
+		shift, name = 0, "ohm"
+	case isPrefix && name == "" && (fraction != "" || size == len(tail)):
+		return "", 0, "", false, &LiteralError{Text: text, Want: needsUnit, Hint: fmt.Sprintf("write the unit too, as in %sohm or %sF", text, text)}
+	case !isPrefix || fraction == "":
+		return "", 0, "", false, nil
+	}
+	if exponent != "" || strings.Contains(mantissa, ".") {
+		return "", 0, "", false, &LiteralError{Text: text, Want: fmt.Sprintf("has a point and the letter %c, which stands for one", letter)}
+	}
+	return fraction, shift, name, true, nil
+}
+
+// ParseUnit reads a unit alone, with a prefix on its numerator or without: nV/rtHz, A/V^2, ohm, V^0.5, 1/V, "". The value is one of the
+// unit in SI; of degC, it is a difference of 1 K. Errors are *LiteralError.
+func ParseUnit(text string) (Value, error) {
+	s, err := parseUnit(normal(text))
+	if err != nil {
+		return Value{}, err
+	}
+	scale, err := decimal("1", "", s.exponent)
+	if err != nil {
+		return Value{}, &LiteralError{Text: text, Want: outOfRange}
+	}
+	return Value{SI: scale * s.factor, Dimension: s.dimension, Crest: s.crest}, nil
+}
+
+// parseUnit reads "", a unit, a power of one, or a quotient.
+func parseUnit(text string) (symbol, error) {
+	if text == "" {
+		return symbol{factor: 1}, nil
+	}
+	above, below, quotient := strings.Cut(text, "/")
+	v := symbol{factor: 1}
+	if !quotient || (above != "" && above != "1") {
+		var err error
+		if v, err = parsePower(above, true); err != nil || !quotient {
+			return v, err
+		}
+	}
+	w, err := parseBelow(below)
+	if err != nil {
+		return symbol{}, err
+	}
+	if v.crest != Plain || v.scaling != linear {
+		return symbol{}, &LiteralError{Text: above, Want: standsAlone}
+	}
+	return symbol{dimension: v.dimension.Div(w.dimension), factor: v.factor / w.factor, exponent: v.exponent - w.exponent}, nil
+}
+
+// parseBelow reads what stands under the stroke. Of the units with a prefix only parts of a second are written there.
+func parseBelow(text string) (symbol, error) {
+	if text == "rtHz" {
+		return symbol{dimension: Frequency.root(), factor: 1}, nil
+	}
+	s, err := parsePower(text, text == "us" || text == "µs" || text == "μs" || text == "ms" || text == "ns")
+	switch {
+	case text == "degC":
+		return s, &LiteralError{Text: text, Want: standsAlone, Hint: "did you mean K?"}
+	case err == nil && (s.crest != Plain || s.scaling != linear):
+		return s, &LiteralError{Text: text, Want: standsAlone}
+	}
+	return s, err
 }
 
 // parsePower reads unit or unit^n.
-func parsePower(text string, prefixed bool) (Value, error) {
+func parsePower(text string, prefixed bool) (symbol, error) {
 	base, power, has := strings.Cut(text, "^")
-	v, err := parseSymbol(base, prefixed)
+	s, err := parseSymbol(base, prefixed)
 	if err != nil || !has {
-		return v, err
+		return s, err
 	}
 	p, err := strconv.ParseFloat(power, 64)
 	if err != nil {
-		return Value{}, &LiteralError{Text: text, Want: "want a number as the power of a unit"}
+		return symbol{}, &LiteralError{Text: text, Want: "wants a number as the power of a unit"}
 	}
-	d, ok := v.Dimension.Pow(p)
+	d, ok := s.dimension.Pow(p)
 	if !ok {
-		return Value{}, &LiteralError{Text: text, Want: "want a power that is a multiple of 1/2"}
+		return symbol{}, &LiteralError{Text: text, Want: "has a power that is no multiple of 1/2"}
 	}
-	return Value{SI: math.Pow(v.SI, p), Dimension: d}, nil
+	if s.crest != Plain || s.scaling != linear {
+		return symbol{}, &LiteralError{Text: base, Want: standsAlone}
+	}
+	exponent := float64(s.exponent) * p
+	whole := math.Round(exponent)
+	if !(math.Abs(whole) < 1000) {
+		return symbol{}, &LiteralError{Text: text, Want: outOfRange}
+	}
+	return symbol{dimension: d, factor: math.Pow(s.factor, p) * math.Pow(10, exponent-whole), exponent: int(whole)}, nil
 }
 
-// parseSymbol reads one unit.
-func parseSymbol(text string, prefixed bool) (Value, error) {
+// parseSymbol reads one unit. A unit as it stands goes before a prefix with a unit.
+func parseSymbol(text string, prefixed bool) (symbol, error) {
 	if s, ok := lookUp(text); ok {
-		return Value{SI: s.scale, Dimension: s.dimension, Crest: s.crest}, nil
+		return s, nil
 	}
 	letter, size := utf8.DecodeRuneInString(text)
-	scale, ok := prefixes[letter]
-	if ok && prefixed {
+	if shift, ok := prefix(letter); ok && prefixed {
 		if s, known := lookUp(text[size:]); known && s.prefixes {
-			return Value{SI: scale * s.scale, Dimension: s.dimension, Crest: s.crest}, nil
+			s.exponent += shift
+			return s, nil
 		}
 	}
-	return Value{}, &LiteralError{Text: text, Want: "is not a unit", Hint: unitHint(text)}
-}
-
-// unitHint guesses what was meant.
-func unitHint(text string) string {
-	if letter, size := utf8.DecodeRuneInString(text); size > 0 && size == len(text) {
-		if _, ok := prefixes[letter]; ok {
-			return "a prefix needs a unit behind it, as in 1" + text + "V"
-		}
-	}
-	swap := map[string]string{
-		"volt": "V", "volts": "V", "v": "V", "amp": "A", "amps": "A", "a": "A", "Ohm": "ohm", "ohms": "ohm", "Ohms": "ohm", "OHM": "ohm", "farad": "F", "f": "F",
-		"henry": "H", "h": "H", "hz": "Hz", "HZ": "Hz", "sec": "s", "S": "S", "watt": "W", "w": "W", "db": "dB", "DB": "dB", "percent": "%", "Kelvin": "K",
-		"kelvin": "K", "C": "degC", "degF": "degC", "vpp": "Vpp", "VPP": "Vpp", "vrms": "Vrms", "VRMS": "Vrms",
-	}
-	if s, ok := swap[text]; ok {
-		return "did you mean " + s + "?"
-	}
-	letter, size := utf8.DecodeRuneInString(text)
-	tail := text[size:]
-	fix := map[rune]string{'K': "k", 'U': "u", 'N': "n", 'P': "p", 'g': "G", 't': "T"}
-	better := tail
-	if s, ok := swap[tail]; ok {
-		better = s
-	}
-	if p, ok := fix[letter]; ok {
-		if _, known := lookUp(better); known {
-			return "did you mean " + p + better + "?"
-		}
-	}
-	if _, ok := prefixes[letter]; ok && better != tail {
-		return "did you mean " + string(letter) + better + "?"
-	}
-	return ""
+	return symbol{}, &LiteralError{Text: text, Want: "is not a unit", Hint: unitHint(text)}
 }

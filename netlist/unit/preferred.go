@@ -3,15 +3,18 @@ package unit
 import (
 	"fmt"
 	"math"
+	"strconv"
 )
 
-// e24 is the series of IEC 60063:2015, table 1; its values differ from rounded powers where history wanted it. E6 and E12
-// are every fourth and every second of it.
-var e24 = []float64{
-	1.0, 1.1, 1.2, 1.3, 1.5, 1.6, 1.8, 2.0, 2.2, 2.4, 2.7, 3.0, 3.3, 3.6, 3.9, 4.3, 4.7, 5.1, 5.6, 6.2, 6.8, 7.5, 8.2, 9.1,
+// e24 returns the series of IEC 60063:2015, table 1 (values from memory); they differ from rounded powers from 2.7 to 4.7 and at 8.2, where
+// history wanted it. E6 and E12 are every fourth and every second of it.
+func e24() []float64 {
+	return []float64{
+		1.0, 1.1, 1.2, 1.3, 1.5, 1.6, 1.8, 2.0, 2.2, 2.4, 2.7, 3.0, 3.3, 3.6, 3.9, 4.3, 4.7, 5.1, 5.6, 6.2, 6.8, 7.5, 8.2, 9.1,
+	}
 }
 
-// exception is the one value of E192 that is not the rounded power: 9.20 instead of 9.19 (IEC 60063:2015, table 2).
+// The one value of E192 that is not the rounded power, 9.19: IEC 60063:2015, table 2 (value from memory).
 const exceptionIndex, exceptionValue = 185, 9.20
 
 // Series returns the values of one decade, from 1 to below 10, of E6, E12, E24, E48, E96 or E192.
@@ -20,7 +23,7 @@ func Series(n int) ([]float64, error) {
 	case 6, 12, 24:
 		var v []float64
 		for i := 0; i < 24; i += 24 / n {
-			v = append(v, e24[i])
+			v = append(v, e24()[i])
 		}
 		return v, nil
 	case 48, 96, 192:
@@ -50,7 +53,7 @@ func Preferred(series int, x float64) (float64, error) {
 	best, distance := math.NaN(), math.Inf(1)
 	for shift := -1.0; shift <= 1; shift++ {
 		for _, v := range values {
-			c := decimal(v, int(decade+shift))
+			c := tenfold(v, int(decade+shift))
 			if d := math.Abs(math.Log(c / x)); d < distance {
 				best, distance = c, d
 			}
@@ -59,11 +62,11 @@ func Preferred(series int, x float64) (float64, error) {
 	return best, nil
 }
 
-// decimal returns v 10^e as the nearest float64, not a product of two rounded numbers.
-func decimal(v float64, e int) float64 {
-	var c float64
-	if _, err := fmt.Sscanf(fmt.Sprintf("%ge%d", v, e), "%g", &c); err != nil {
+// tenfold returns v 10^e rounded once, not the product of two rounded numbers.
+func tenfold(v float64, e int) float64 {
+	x, err := decimal(strconv.FormatFloat(v, 'f', -1, 64), "", e)
+	if err != nil {
 		return v * math.Pow(10, float64(e))
 	}
-	return c
+	return x
 }

@@ -33,10 +33,11 @@ func ShowDigits(si float64, d Dimension, digits int) string {
 	if exponent == 0 {
 		return Trim(rounded, digits) + " " + symbol
 	}
-	return Trim(rounded*math.Pow(10, float64(-exponent)), digits) + " " + prefixNames[exponent] + symbol
+	return Trim(rounded*math.Pow(10, float64(-exponent)), digits) + " " + prefixLetter(exponent) + symbol
 }
 
-var prefixNames = map[int]string{-15: "f", -12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
+// prefixLetter returns the prefix of a power of ten from -15 to 12 in steps of 3.
+func prefixLetter(exponent int) string { return strings.TrimSpace("fpnum kMGT"[exponent/3+5:][:1]) }
 
 // prefixable reports whether a prefix may stand before the symbol.
 func prefixable(symbol string) bool {

@@ -26,58 +26,100 @@ var (
 	Power        = dim(1, 2, -3, 0, 0)
 	Energy       = dim(1, 2, -2, 0, 0)
 	Charge       = dim(0, 0, 1, 1, 0)
+	Flux         = dim(1, 2, -2, -1, 0)
 	Temperature  = dim(0, 0, 0, 0, 1)
+	Slew         = dim(1, 2, -4, -1, 0)
 	VoltageNoise = Voltage.Div(Frequency.root())
 	CurrentNoise = Current.Div(Frequency.root())
 )
 
+// root returns the square root of a dimension that has one, for the table of names.
 func (d Dimension) root() Dimension {
 	r, _ := d.Sqrt()
 	return r
 }
 
-// symbol is a unit that stands by itself.
+// scaling says how the number before a unit becomes the number in SI.
+type scaling uint8
+
+const (
+	linear  scaling = iota
+	celsius         // an absolute temperature: K = degC + 273.15
+	decibel         // an amplitude ratio: 10^(dB/20)
+)
+
+// symbol is a unit that stands by itself. One of it is factor times 10^exponent in SI.
 type symbol struct {
 	name      string
 	dimension Dimension
-	scale     float64 // SI per unit
+	noun      string // of its dimension, if this is the symbol it is written with
+	factor    float64
+	exponent  int
 	prefixes  bool
 	crest     Crest
-	noun      string
+	scaling   scaling
 }
 
-// symbols are all units, the longest names first where one begins another.
-var symbols = []symbol{
-	{"Vrms", Voltage, 1, true, RMS, ""}, {"Vpp", Voltage, 1, true, PeakToPeak, ""}, {"Vpk", Voltage, 1, true, Peak, ""},
-	{"Arms", Current, 1, true, RMS, ""}, {"App", Current, 1, true, PeakToPeak, ""}, {"Apk", Current, 1, true, Peak, ""},
-	{"ohm", Resistance, 1, true, Plain, "a resistance"}, {"Ω", Resistance, 1, true, Plain, ""},
-	{"degC", Temperature, 1, false, Plain, ""}, {"deg", Number, math.Pi / 180, false, Plain, ""}, {"rad", Number, 1, true, Plain, ""},
-	{"ppm", Number, 1e-6, false, Plain, ""}, {"dB", Number, 1, false, Plain, ""}, {"%", Number, 1e-2, false, Plain, ""},
-	{"Hz", Frequency, 1, true, Plain, "a frequency"}, {"V", Voltage, 1, true, Plain, "a voltage"}, {"A", Current, 1, true, Plain, "a current"},
-	{"S", Conductance, 1, true, Plain, "a conductance"}, {"F", Capacitance, 1, true, Plain, "a capacitance"}, {"H", Inductance, 1, true, Plain, "an inductance"},
-	{"s", Time, 1, true, Plain, "a time"}, {"W", Power, 1, true, Plain, "a power"}, {"J", Energy, 1, true, Plain, "an energy"},
-	{"C", Charge, 1, true, Plain, "a charge"}, {"K", Temperature, 1, true, Plain, "a temperature"},
-}
-
-// quotients are the units that the language writes as a quotient. Any quotient of known units parses in a catalogue; in a
-// file only these do.
-var quotients = map[string]bool{
-	"V/s": true, "V/us": true, "A/s": true, "ppm/K": true, "ppm/K^2": true, "%/K": true, "V/K": true, "K/W": true, "J/K": true,
-	"ppm/V": true, "V/rtHz": true, "A/rtHz": true, "V/V": true, "A/V": true, "A/V^2": true, "1/V": true,
-}
-
-// prefixes of the SI that the language knows, case-sensitive.
-var prefixes = map[rune]float64{
-	'f': 1e-15, 'p': 1e-12, 'n': 1e-9, 'u': 1e-6, 'µ': 1e-6, 'μ': 1e-6, 'm': 1e-3, 'k': 1e3, 'M': 1e6, 'G': 1e9, 'T': 1e12,
-}
-
-// normal writes the several code points of ohm and micro one way.
-func normal(text string) string {
-	if strings.IndexFunc(text, func(r rune) bool { return r >= utf8.RuneSelf }) < 0 {
-		return text
+// symbols returns all units of the language.
+func symbols() []symbol {
+	si := func(name string, d Dimension, noun string) symbol {
+		return symbol{name: name, dimension: d, noun: noun, factor: 1, prefixes: true}
 	}
-	return strings.NewReplacer("Ω", "Ω", "μ", "µ").Replace(text)
+	amplitude := func(name string, d Dimension, c Crest) symbol {
+		return symbol{name: name, dimension: d, factor: 1, prefixes: true, crest: c}
+	}
+	ratio := func(name string, exponent int) symbol { return symbol{name: name, factor: 1, exponent: exponent} }
+	return []symbol{
+		si("V", Voltage, "a voltage"), si("A", Current, "a current"), si("ohm", Resistance, "a resistance"), si("Ω", Resistance, ""),
+		si("S", Conductance, "a conductance"), si("F", Capacitance, "a capacitance"), si("H", Inductance, "an inductance"),
+		si("s", Time, "a time"), si("Hz", Frequency, "a frequency"), si("W", Power, "a power"), si("J", Energy, "an energy"),
+		si("C", Charge, "a charge"), si("K", Temperature, "a temperature"),
+		amplitude("Vpp", Voltage, PeakToPeak), amplitude("Vpk", Voltage, Peak), amplitude("Vrms", Voltage, RMS),
+		amplitude("App", Current, PeakToPeak), amplitude("Apk", Current, Peak), amplitude("Arms", Current, RMS),
+		ratio("rad", 0), ratio("%", -2), ratio("ppm", -6),
+		{name: "deg", factor: math.Pi / 180},
+		{name: "degC", dimension: Temperature, factor: 1, scaling: celsius},
+		{name: "dB", factor: 1, scaling: decibel},
+	}
 }
+
+// isQuotient reports whether the language has a quotient of two units as a unit. A file may carry only these, so that 4.6V/Iq
+// is a division; a catalogue may name any quotient of known units.
+func isQuotient(text string) bool {
+	switch text {
+	case "V/s", "V/us", "A/s", "ppm/K", "ppm/K^2", "%/K", "V/K", "K/W", "J/K", "ppm/V", "V/rtHz", "A/rtHz", "V/V", "A/V", "A/V^2", "1/V":
+		return true
+	}
+	return false
+}
+
+// prefix returns the power of ten of an SI prefix, case-sensitive. The two code points of micro are U+00B5 and U+03BC.
+func prefix(letter rune) (exponent int, ok bool) {
+	switch letter {
+	case 'f':
+		return -15, true
+	case 'p':
+		return -12, true
+	case 'n':
+		return -9, true
+	case 'u', '\u00B5', '\u03BC':
+		return -6, true
+	case 'm':
+		return -3, true
+	case 'k':
+		return 3, true
+	case 'M':
+		return 6, true
+	case 'G':
+		return 9, true
+	case 'T':
+		return 12, true
+	}
+	return 0, false
+}
+
+// normal writes the two code points of ohm, U+03A9 and U+2126, one way.
+func normal(text string) string { return strings.ReplaceAll(text, "\u2126", "\u03A9") }
 
 func lookUp(name string) (symbol, bool) {
 	s, ok := byName()[name]
@@ -85,8 +127,8 @@ func lookUp(name string) (symbol, bool) {
 }
 
 var byName = sync.OnceValue(func() map[string]symbol {
-	m := make(map[string]symbol, len(symbols))
-	for _, s := range symbols {
+	m := map[string]symbol{}
+	for _, s := range symbols() {
 		m[s.name] = s
 	}
 	return m
@@ -95,21 +137,23 @@ var byName = sync.OnceValue(func() map[string]symbol {
 // IsQuotient reports whether a numerator, with or without a prefix, over a denominator is a unit that a literal may carry: the lexer
 // asks, to tell 1.2V/us from 4.6V/Iq. An empty numerator stands for 1.
 func IsQuotient(above, below string) bool {
-	above = normal(above)
 	if above == "" {
 		above = "1"
 	}
-	if quotients[above+"/"+below] {
+	if isQuotient(above + "/" + below) {
 		return true
 	}
 	letter, size := utf8.DecodeRuneInString(above)
-	_, ok := prefixes[letter]
-	return ok && size < len(above) && quotients[above[size:]+"/"+below]
+	_, ok := prefix(letter)
+	if !ok || size == len(above) {
+		return false
+	}
+	s, known := lookUp(above[size:])
+	return known && s.prefixes && isQuotient(above[size:]+"/"+below)
 }
 
-// IsUnitName reports whether name is a unit, with or without a prefix, and so cannot be the name of a value.
-// One letter with a prefix counts only if it is written as units are: mV is one, and so is ms.
+// IsUnitName reports whether name is a unit, with or without a prefix: V, ms, kohm. Such a name cannot name a value.
 func IsUnitName(name string) bool {
-	_, err := ParseUnit(name)
-	return name != "" && err == nil && !strings.ContainsAny(name, "/^")
+	_, err := parseSymbol(normal(name), true)
+	return name != "" && err == nil
 }
