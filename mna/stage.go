@@ -6,6 +6,9 @@ const (
 	// stageIterations bounds Newton's method within a stage; a step that needs more is too long. A junction that turns off may take one iteration for
 	// every thermal voltage.
 	stageIterations = 50
+	// patientIterations may pass before an iteration that gets no nearer has arrived within stageStall of the largest unknown.
+	patientIterations = 8
+	stageStall        = 1e-7
 	// stageShare is the share of the allowed error that the iteration may leave.
 	stageShare = 0.02
 	// curvatureFrom is the size of an update beside the allowed error from which on its successor tells the curvature rather than
@@ -40,7 +43,7 @@ func (n *stageNewton) solve(p *problem) error {
 	w.eval.Limit = true
 	last := 0.0
 	n.age++
-	for range stageIterations {
+	for i := range stageIterations {
 		if err := w.step(p); err != nil {
 			return err
 		}
@@ -60,7 +63,7 @@ func (n *stageNewton) solve(p *problem) error {
 			w.carry()
 			return nil
 		}
-		if last > 0 && size > stallRatio*last && w.movement() <= stallShare {
+		if last > 0 && size > stallRatio*last && w.movement() <= stall(i) {
 			w.carry()
 			return nil
 		}
@@ -68,6 +71,15 @@ func (n *stageNewton) solve(p *problem) error {
 		last = size
 	}
 	return errSlow
+}
+
+// stall is the movement beside the largest unknowns up to which iteration i may have stopped getting nearer. In a step so short that charges dwarf
+// currents, rounding moves the unknowns by far more than their last bits.
+func stall(i int) float64 {
+	if i >= patientIterations {
+		return stageStall
+	}
+	return stallShare
 }
 
 // leaves is the error after an update, in allowed errors.
