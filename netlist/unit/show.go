@@ -15,24 +15,15 @@ func Show(si float64, d Dimension) string { return ShowDigits(si, d, ShownDigits
 // ShowDigits writes a value with a number of significant digits.
 func ShowDigits(si float64, d Dimension, digits int) string {
 	symbol := d.Symbol()
-	if d == Temperature {
-		return Trim(si, digits) + " K"
-	}
 	if symbol == "" {
-		return showNumber(si, digits)
+		return Trim(si, digits)
 	}
-	if !prefixable(symbol) {
-		return showNumber(si, digits) + " " + symbol
-	}
-	if si == 0 || math.IsNaN(si) || math.IsInf(si, 0) {
-		return showNumber(si, digits) + " " + symbol
+	if d == Temperature || !prefixable(symbol) || si == 0 || math.IsNaN(si) || math.IsInf(si, 0) {
+		return Trim(si, digits) + " " + symbol
 	}
 	rounded := round(si, digits)
 	exponent := int(math.Floor(math.Log10(math.Abs(rounded))/3+1e-12)) * 3
 	exponent = max(-15, min(12, exponent))
-	if exponent == 0 {
-		return Trim(rounded, digits) + " " + symbol
-	}
 	return Trim(rounded*math.Pow(10, float64(-exponent)), digits) + " " + prefixLetter(exponent) + symbol
 }
 
@@ -63,11 +54,11 @@ func Trim(x float64, digits int) string {
 		return "infinite"
 	case math.IsInf(x, -1):
 		return "-infinite"
+	case x == 0:
+		return "0" // of either sign
 	}
 	return strconv.FormatFloat(round(x, digits), 'g', -1, 64)
 }
-
-func showNumber(x float64, digits int) string { return Trim(x, digits) }
 
 // ShowRatio writes a ratio in dB: 20 log10 |x|.
 func ShowRatio(x float64) string {
