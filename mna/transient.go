@@ -258,7 +258,7 @@ const (
 	// finestFirst bounds it as a share of the first step after the last corner.
 	finestFirst = 1e-6
 	// finestMost bounds what they may grow to, as a share of the same.
-	finestMost = 1e-3
+	finestMost = 1e-5
 )
 
 // finest is the length in s of steps whose error is not asked for (it grows while such steps follow each other: what does not end is no jump but rounding): what happens within one is a jump to anything that looks at the run. Ideal parts do

@@ -51,7 +51,6 @@ type LU[T Scalar] struct {
 	depth  []int32
 	path   []int32
 	marked []int32
-	norm   float64
 
 	gather []gatherEntry
 	start  []int32
