@@ -21,10 +21,18 @@ func ShowDigits(si float64, d Dimension, digits int) string {
 	if d == Temperature || !prefixable(symbol) || si == 0 || math.IsNaN(si) || math.IsInf(si, 0) {
 		return Trim(si, digits) + " " + symbol
 	}
-	rounded := round(si, digits)
-	exponent := int(math.Floor(math.Log10(math.Abs(rounded))/3+1e-12)) * 3
-	exponent = max(-15, min(12, exponent))
-	return Trim(rounded*math.Pow(10, float64(-exponent)), digits) + " " + prefixLetter(exponent) + symbol
+	exponent := max(-15, min(12, engineering(si, digits)))
+	return Trim(si*math.Pow(10, float64(-exponent)), digits) + " " + prefixLetter(exponent) + symbol
+}
+
+// engineering returns the power of ten, a multiple of 3, that leaves 1 to 999 of x when it is rounded to a number of digits.
+func engineering(x float64, digits int) int {
+	_, text, _ := strings.Cut(strconv.FormatFloat(x, 'e', digits-1, 64), "e")
+	e, err := strconv.Atoi(text)
+	if err != nil {
+		return 0
+	}
+	return e - ((e%3)+3)%3
 }
 
 // prefixLetter returns the prefix of a power of ten from -15 to 12 in steps of 3.
