@@ -68,10 +68,9 @@ type checker struct {
 	options Options
 	tasks   []*task
 
-	mu      sync.Mutex // guards done, the calls of Progress and halted
-	done    int
-	halted  bool
-	stopped bool // some task was not run
+	mu     sync.Mutex // guards done, the calls of Progress and halted
+	done   int
+	halted bool
 }
 
 // plan lists the tasks in the order of the report.

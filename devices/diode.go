@@ -94,7 +94,6 @@ type diodeStamp struct {
 	outer       square
 	junction    square
 	state       int
-	voltage     square
 }
 
 func (d *diode) Bind(b mna.Binder) mna.Stamp {
