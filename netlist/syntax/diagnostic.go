@@ -9,7 +9,7 @@ const (
 )
 
 // Code identifies a kind of problem, stable over versions: "P101". The table of codes with an example each is
-// in netlist/codes.go.
+// in codes.go here and in package netlist.
 type Code string
 
 // Diagnostic is one problem of a file, at its place.

@@ -2,50 +2,74 @@ package syntax
 
 import (
 	"fmt"
+	"slices"
 	"sort"
+	"strconv"
 	"strings"
-	"unicode/utf8"
+	"unicode"
 )
 
-// Error returns the diagnostic in one line: file:line:column: message.
+// Error returns the diagnostic in one line: file:line:column: message. A warning says so before its message.
 func (d *Diagnostic) Error() string {
-	s := d.Message
-	if d.Span.Start.Line > 0 {
-		s = fmt.Sprintf("%s:%d:%d: %s", d.Span.File, d.Span.Start.Line, d.Span.Start.Column, d.Message)
-	} else if d.Span.File != "" {
-		s = d.Span.File + ": " + d.Message
+	var parts []string
+	if d.Span.File != "" {
+		parts = append(parts, d.Span.File)
 	}
-	return s
+	at := d.Span.Start
+	if at.Line > 0 {
+		parts = append(parts, strconv.Itoa(at.Line), strconv.Itoa(at.Column))
+	}
+	message := d.Message
+	if d.Severity == Warning {
+		message = "warning: " + message
+	}
+	if len(parts) == 0 {
+		return message
+	}
+	return strings.Join(parts, ":") + ": " + message
 }
 
-// Excerpt returns the source line with the span marked under it, the note and the hint; empty without a place.
+// Excerpt returns the source line with the span marked under it, the note and the hint. Without a place, or for an empty file,
+// there is no line to show. Of a long line the part around the span is shown.
 func (d *Diagnostic) Excerpt() string {
 	var b strings.Builder
-	if d.Span.Start.Line > 0 {
+	if d.Span.Start.Line > 0 && (d.Line != "" || d.Note != "") {
+		line, column := window([]rune(strings.TrimRight(d.Line, "\r")), d.Span.Start.Column)
 		number := fmt.Sprintf("%5d | ", d.Span.Start.Line)
-		line := strings.TrimRight(strings.ReplaceAll(d.Line, "\t", " "), "\r")
-		const widest = 160 // columns of a source line that are shown
-		if utf8.RuneCountInString(line) > widest {
-			line = string([]rune(line)[:widest])
+		width := d.Span.End.Column - d.Span.Start.Column
+		if d.Span.End.Line > d.Span.Start.Line {
+			width = len(line)
 		}
-		fmt.Fprintf(&b, "%s%s\n", number, line)
-		width := 1
-		if d.Span.End.Line == d.Span.Start.Line {
-			width = max(1, d.Span.End.Column-d.Span.Start.Column)
+		width = max(1, min(width, len(line)+1-column))
+		mark := strings.Repeat(" ", len(number)-2) + "| " + strings.Repeat(" ", column-1) + strings.Repeat("^", width)
+		if d.Note != "" {
+			mark += " " + d.Note
 		}
-		width = min(width, max(1, utf8.RuneCountInString(line)+1-d.Span.Start.Column))
-		if d.Span.Start.Column <= widest {
-			fmt.Fprintf(&b, "%s| %s%s", strings.Repeat(" ", len(number)-2), strings.Repeat(" ", d.Span.Start.Column-1), strings.Repeat("^", width))
-			if d.Note != "" {
-				b.WriteString(" " + d.Note)
-			}
-			b.WriteString("\n")
-		}
+		b.WriteString(number + string(line) + "\n" + mark + "\n")
 	}
 	if d.Hint != "" {
-		fmt.Fprintf(&b, "      = %s\n", d.Hint)
+		b.WriteString("      = " + d.Hint + "\n")
 	}
 	return b.String()
+}
+
+// widest is the number of columns of a source line that are shown.
+const widest = 160
+
+// window returns the part of a line around a column, in which it has the column returned. Control characters and tabs become blanks.
+func window(line []rune, column int) ([]rune, int) {
+	column = max(1, min(column, len(line)+1))
+	first := 0
+	if len(line) > widest && column > widest/2 {
+		first = min(column-widest/2, len(line)-widest/2)
+	}
+	shown := slices.Clone(line[first:min(len(line), first+widest)])
+	for i, r := range shown {
+		if unicode.IsControl(r) {
+			shown[i] = ' '
+		}
+	}
+	return shown, column - first
 }
 
 // DiagnosticList is what is wrong with a file, in source order.

@@ -1,62 +1,19 @@
 package syntax
 
 import (
+	"errors"
 	"fmt"
 	"strings"
 
-	"github.com/alecthomas/participle/v2"
 	"github.com/alecthomas/participle/v2/lexer"
 )
-
-// fault is a syntax error at a token. It is a participle.Error, so that it passes through the parser library unchanged.
-type fault struct {
-	code  Code
-	token lexer.Token
-	text  string
-	hint  string
-}
-
-func (f *fault) Error() string            { return f.text }
-func (f *fault) Message() string          { return f.text }
-func (f *fault) Position() lexer.Position { return f.token.Pos }
-
-var _ participle.Error = (*fault)(nil)
-
-// unexpected makes a fault that says what stands there and what could.
-func unexpected(t lexer.Token, want string) *fault {
-	f := &fault{code: CodeUnexpected, token: t, text: fmt.Sprintf("found %s, want %s", describe(t), want)}
-	switch {
-	case t.Type == kindBad && strings.HasPrefix(t.Value, `"`):
-		f.code, f.text = CodeOpenString, "a text that begins here is not closed in its line"
-	case t.Type == kindBad:
-		f.code, f.text = CodeBadCharacter, fmt.Sprintf("%q is no part of the language", t.Value)
-	}
-	return f
-}
-
-// describe names a token for a message.
-func describe(t lexer.Token) string {
-	switch t.Type {
-	case kindEOF:
-		return "the end of the file"
-	case kindLine:
-		return "the end of the line"
-	case kindKeyword:
-		return fmt.Sprintf("the word `%s`", t.Value)
-	}
-	const longest = 40
-	v := t.Value
-	if len(v) > longest {
-		v = v[:longest] + "..."
-	}
-	return "`" + v + "`"
-}
 
 // cursor is the token stream with the depth of the expression being read.
 type cursor struct {
 	*lexer.PeekingLexer
-	depth int
-	end   Position // just past the last token taken
+	depth     int
+	operators int      // of the expression being read
+	end       Position // just past the last token taken
 }
 
 func isSign(t *lexer.Token, value string) bool { return t.Type == kindSign && t.Value == value }
@@ -108,6 +65,11 @@ func (c *cursor) name(what string) (Ident, error) {
 		}
 		return Ident{}, f
 	}
+	if t.Value[0] == '_' {
+		f := unexpected(*t, what)
+		f.hint = "a name begins with a letter"
+		return Ident{}, f
+	}
 	c.take()
 	return Ident{Span: c.span(t.Pos), Name: t.Value}, nil
 }
@@ -136,42 +98,61 @@ func (c *cursor) ref(what string) (Ref, error) {
 	}
 }
 
-// binding powers, tightest last. A power binds to its right, the others to their left.
-var power = map[string]int{"+": 1, "-": 1, "*": 2, "/": 2, "||": 4, "^": 5}
+// power returns how tightly an operator binds; `^` binds to its right, the others to their left.
+func power(operator string) int {
+	switch operator {
+	case "+", "-":
+		return 1
+	case "*", "/":
+		return 2
+	case "||":
+		return 4
+	case "^":
+		return 5
+	}
+	return 0
+}
 
+// unaryPower is how tightly a sign before an operand binds.
 const unaryPower = 3
 
-// maxDepth bounds the nesting of an expression: the parser is recursive, and Go cannot recover from an exhausted stack.
-const maxDepth = 500
+// Bounds of one expression: who walks the tree is recursive, and Go cannot recover from an exhausted stack.
+const (
+	maxNesting   = 500    // of parentheses, calls, signs and powers
+	maxOperators = 10_000 // which nest to the left
+)
 
-// expr reads an expression whose operators bind at least as tightly as least (Pratt, Top down operator precedence, 1973).
+// expr reads an expression whose operators bind at least as tightly as least (V. R. Pratt, Top down operator precedence, Proc. 1st ACM
+// Symposium on Principles of Programming Languages, 1973, pages 41-51).
 func (c *cursor) expr(least int) (Expr, error) {
+	if c.depth == 0 {
+		c.operators = 0
+	}
 	c.depth++
 	defer func() { c.depth-- }()
-	if c.depth > maxDepth {
-		return nil, &fault{code: CodeTooDeep, token: *c.Peek(), text: fmt.Sprintf("the expression nests more than %d deep", maxDepth)}
+	if c.depth > maxNesting {
+		return nil, &fault{code: CodeTooDeep, token: *c.Peek(), text: fmt.Sprintf("the expression nests more than %d deep", maxNesting)}
 	}
 	start := c.Peek().Pos
-	left, err := c.operand()
+	left, err := c.operand(least)
 	if err != nil {
 		return nil, err
 	}
 	for {
 		t := *c.Peek()
-		p, ok := power[t.Value]
-		if t.Type != kindSign || !ok || p < least {
+		p := c.operator(&t)
+		if p == 0 || p < least {
 			return left, nil
+		}
+		if c.operators++; c.operators > maxOperators {
+			return nil, &fault{code: CodeTooDeep, token: t, text: fmt.Sprintf("the expression has more than %d operators", maxOperators)}
 		}
 		c.take()
 		opAt := c.span(t.Pos)
-		next := p + 1
-		if t.Value == "^" {
-			next = p
-			if isSign(c.Peek(), "-") {
-				next = unaryPower
-			}
+		if t.Value != "^" {
+			p++
 		}
-		right, err := c.expr(next)
+		right, err := c.expr(p)
 		if err != nil {
 			return nil, err
 		}
@@ -179,8 +160,16 @@ func (c *cursor) expr(least int) (Expr, error) {
 	}
 }
 
-// operand reads a number, a name, a call, something in parentheses, or a negation of one.
-func (c *cursor) operand() (Expr, error) {
+// operator returns how tightly a token binds as an operator, 0 if it is none.
+func (c *cursor) operator(t *lexer.Token) int {
+	if t.Type != kindSign {
+		return 0
+	}
+	return power(t.Value)
+}
+
+// operand reads a number, a name, a call, something in parentheses, or one of them with a sign that binds at least as tightly as least.
+func (c *cursor) operand(least int) (Expr, error) {
 	t := *c.Peek()
 	switch {
 	case t.Type == kindNumber:
@@ -190,19 +179,9 @@ func (c *cursor) operand() (Expr, error) {
 		text, err := c.text()
 		return &String{text}, err
 	case isSign(&t, "-") || isSign(&t, "+"):
-		return c.signed(t)
+		return c.signed(t, max(least, unaryPower))
 	case isSign(&t, "("):
-		c.take()
-		c.lines()
-		x, err := c.expr(0)
-		if err != nil {
-			return nil, err
-		}
-		c.lines()
-		if err := c.sign(")"); err != nil {
-			return nil, err
-		}
-		return &Paren{Span: c.span(t.Pos), X: x}, nil
+		return c.paren(t)
 	case t.Type == kindName:
 		r, err := c.ref("a name")
 		if err != nil {
@@ -212,21 +191,58 @@ func (c *cursor) operand() (Expr, error) {
 			return c.call(r)
 		}
 		return &Name{r}, nil
+	case isSign(&t, "."):
+		f := unexpected(t, "an expression")
+		f.hint = "a number begins with a digit: 0.5"
+		return nil, f
 	}
 	return nil, unexpected(t, "an expression")
 }
 
-// signed reads what follows a sign: a literal that it touches takes it in, so that -40degC is a temperature.
-func (c *cursor) signed(t lexer.Token) (Expr, error) {
+// paren reads a quantity in parentheses.
+func (c *cursor) paren(open lexer.Token) (Expr, error) {
+	c.take()
+	c.lines()
+	x, err := c.measure()
+	if err != nil {
+		return nil, err
+	}
+	c.lines()
+	if err := c.closing(open); err != nil {
+		return nil, err
+	}
+	return &Paren{Span: c.span(open.Pos), X: x}, nil
+}
+
+// closing consumes the closing parenthesis of one that was opened.
+func (c *cursor) closing(open lexer.Token) error {
+	err := c.sign(")")
+	var f *fault
+	if errors.As(err, &f) {
+		f.hint = fmt.Sprintf("the parenthesis opened in line %d, column %d is not closed", open.Pos.Line, open.Pos.Column)
+	}
+	return err
+}
+
+// signed reads what follows a sign. A literal that it touches takes the sign in, so that -40degC is a temperature, unless
+// an operator behind it binds more tightly than the sign: -2^2 is -(2^2).
+func (c *cursor) signed(t lexer.Token, least int) (Expr, error) {
 	c.take()
 	if n := c.Peek(); n.Type == kindNumber && n.Pos.Offset == t.Pos.Offset+1 {
+		before, end := c.MakeCheckpoint(), c.end
 		number := *c.take()
-		return &Number{Span: c.span(t.Pos), Text: strings.TrimPrefix(t.Value, "+") + number.Value}, nil
+		if p := c.operator(c.Peek()); t.Value == "+" || p <= unaryPower || p < least {
+			return &Number{Span: c.span(t.Pos), Text: strings.TrimPrefix(t.Value, "+") + number.Value}, nil
+		}
+		c.LoadCheckpoint(before)
+		c.end = end
 	}
 	if t.Value == "+" {
-		return nil, unexpected(t, "an expression")
+		f := unexpected(t, "an expression")
+		f.hint = "only a number takes the sign +"
+		return nil, f
 	}
-	x, err := c.expr(unaryPower)
+	x, err := c.expr(least)
 	if err != nil {
 		return nil, err
 	}
@@ -244,27 +260,42 @@ func (c *cursor) text() (Text, error) {
 	return Text{Span: c.span(t.Pos), Value: value}, nil
 }
 
-// call reads the arguments of f.
-func (c *cursor) call(f Ref) (Expr, error) {
-	start := c.Peek().Pos
-	start.Offset, start.Line, start.Column = f.Start.Offset, f.Start.Line, f.Start.Column
-	c.take()
-	call := &Call{Func: f}
+// listed reads ( item, item ... ), which may go over several lines.
+func (c *cursor) listed(item func() error) error {
+	open := *c.Peek()
+	if err := c.sign("("); err != nil {
+		return err
+	}
+	first := true
 	for c.lines(); !isSign(c.Peek(), ")"); c.lines() {
-		if len(call.Args) > 0 {
-			if err := c.sign(","); err != nil {
-				return nil, err
+		if !first {
+			if !isSign(c.Peek(), ",") {
+				return c.closing(open)
 			}
+			c.take()
 			c.lines()
 		}
-		a, err := c.argument()
-		if err != nil {
-			return nil, err
+		first = false
+		if err := item(); err != nil {
+			return err
 		}
-		call.Args = append(call.Args, a)
 	}
 	c.take()
-	call.Span = c.span(start)
+	return nil
+}
+
+// call reads the arguments of f.
+func (c *cursor) call(f Ref) (Expr, error) {
+	call := &Call{Func: f}
+	err := c.listed(func() error {
+		a, err := c.argument()
+		call.Args = append(call.Args, a)
+		return err
+	})
+	if err != nil {
+		return nil, err
+	}
+	call.Span = Span{File: f.File, Start: f.Start, End: c.end}
 	return call, nil
 }
 
@@ -358,59 +389,6 @@ func (c *cursor) overRange(start lexer.Position, x Expr) (Expr, error) {
 	return m, nil
 }
 
-// The captures of the parser library's grammars.
-type (
-	exprPart  struct{ Expr }  // an expression
-	quantPart struct{ Expr }  // a quantity with at or over
-	namePart  struct{ Ident } // a name
-	refPart   struct{ Ref }   // a dotted name
-	textPart  struct{ Text }  // a quoted text, optional
-	modePart  struct{ Ident } // a word that is no keyword, optional
-	modsPart  struct{ List []Modifier }
-)
-
-// within runs f on the library's token stream.
-func within(lex *lexer.PeekingLexer, f func(c *cursor) error) error {
-	return f(&cursor{PeekingLexer: lex})
-}
-
-func (e *exprPart) Parse(lex *lexer.PeekingLexer) error {
-	return within(lex, func(c *cursor) (err error) { e.Expr, err = c.expr(0); return err })
-}
-
-func (e *quantPart) Parse(lex *lexer.PeekingLexer) error {
-	return within(lex, func(c *cursor) (err error) { e.Expr, err = c.measure(); return err })
-}
-
-func (n *namePart) Parse(lex *lexer.PeekingLexer) error {
-	return within(lex, func(c *cursor) (err error) { n.Ident, err = c.name("a name"); return err })
-}
-
-func (r *refPart) Parse(lex *lexer.PeekingLexer) error {
-	if t := lex.Peek(); t.Type != kindName {
-		return participle.NextMatch
-	}
-	return within(lex, func(c *cursor) (err error) { r.Ref, err = c.ref("a name"); return err })
-}
-
-func (t *textPart) Parse(lex *lexer.PeekingLexer) error {
-	if lex.Peek().Type != kindString {
-		return participle.NextMatch
-	}
-	return within(lex, func(c *cursor) (err error) { t.Text, err = c.text(); return err })
-}
-
-func (m *modePart) Parse(lex *lexer.PeekingLexer) error {
-	if t := lex.Peek(); t.Type != kindName || t.Value == "open" {
-		return participle.NextMatch
-	}
-	return within(lex, func(c *cursor) (err error) { m.Ident, err = c.name("a mode"); return err })
-}
-
-func (m *modsPart) Parse(lex *lexer.PeekingLexer) error {
-	return within(lex, func(c *cursor) (err error) { m.List, err = c.modifiers(); return err })
-}
-
 // modifiers reads tol, sigma, tc and start with their values.
 func (c *cursor) modifiers() ([]Modifier, error) {
 	var list []Modifier
@@ -425,7 +403,7 @@ func (c *cursor) modifiers() ([]Modifier, error) {
 		if m.Value, err = c.expr(0); err != nil {
 			return list, err
 		}
-		if t.Value == "tc" && isSign(c.Peek(), ",") {
+		if t.Value == "tc" && c.second() {
 			c.take()
 			if m.Second, err = c.expr(0); err != nil {
 				return list, err
@@ -433,5 +411,24 @@ func (c *cursor) modifiers() ([]Modifier, error) {
 		}
 		m.Span = c.span(t.Pos)
 		list = append(list, m)
+	}
+}
+
+// second reports whether the comma that stands here comes before the quadratic value of tc, and not before the next entry of a part.
+func (c *cursor) second() bool {
+	if !isSign(c.Peek(), ",") {
+		return false
+	}
+	before, end := c.MakeCheckpoint(), c.end
+	defer func() {
+		c.LoadCheckpoint(before)
+		c.end = end
+	}()
+	c.take()
+	switch t := c.take(); {
+	case t.Type == kindName:
+		return !isSign(c.Peek(), "=")
+	default:
+		return t.Type == kindNumber || isSign(t, "(") || isSign(t, "-")
 	}
 }

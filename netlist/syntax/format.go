@@ -15,40 +15,75 @@ func Format(name, src string) (string, error) {
 	if err := list.Err(); err != nil {
 		return src, err
 	}
-	return layOut(f.Source), nil
+	return layOut(f), nil
 }
 
-// Tidy writes a piece of a text in one line with the blanks of the common form.
+// Tidy writes a piece of a text in one line with the blanks of the common form: a quantity, or one with its comparison.
 func Tidy(src string) string {
-	var b strings.Builder
-	s := &scanner{src: src, line: 1, column: 1}
-	var before, last lexer.Token
-	for {
-		t := s.scan()
-		if t.Type == kindEOF {
-			return b.String()
-		}
-		if t.Type == kindLine {
-			continue
-		}
-		if last.Type != 0 && spaced(before, last, t) {
-			b.WriteByte(' ')
-		}
-		b.WriteString(t.Value)
-		before, last = last, t
-		s.last = t
+	const word = "expect "
+	f, list := Parse("", word+src, Limits{})
+	if list.Err() != nil {
+		f, list = Parse("", word+src+" >= 0", Limits{})
 	}
+	l := &layout{}
+	if list.Err() == nil {
+		l.tree = rolesOf(f.Statements)
+	}
+	for _, line := range strings.Split(word+src, "\n") {
+		s := newScanner("", line, defaultTokens)
+		for t := s.scan(); t.Type != kindEOF; t = s.scan() {
+			t.Pos.Offset += l.base
+			l.word(t)
+			s.last = t
+		}
+		l.base += len(line) + 1
+	}
+	return strings.TrimPrefix(l.code.String(), word)
+}
+
+// role is what a sign does, by its offset, where the tokens around it do not tell.
+type role uint8
+
+const (
+	binarySign  role = iota // between two operands
+	literalSign             // of the number that it touches
+	unarySign               // before an operand
+	innerParen              // opens an expression in parentheses, not a list
+)
+
+// rolesOf returns the signs and parentheses of a tree that are not binary operators or lists.
+func rolesOf(statements []Statement) map[int]role {
+	roles := map[int]role{}
+	for _, s := range statements {
+		Walk(s, func(n Node) bool {
+			start := n.Place().Start.Offset
+			switch n := n.(type) {
+			case *Number:
+				if n.End.Offset-start > len(n.Text) || n.Text[0] == '-' {
+					roles[start] = literalSign
+				}
+			case *Unary:
+				roles[start] = unarySign
+			case *Paren:
+				roles[start] = innerParen
+			}
+			return true
+		})
+	}
+	return roles
 }
 
 // layout is a text being formatted, line by line.
 type layout struct {
-	lines   []formatted
-	depth   int
-	parens  int
-	open    bool // the statement of the last line goes on
-	current formatted
-	before  lexer.Token
-	last    lexer.Token
+	tree   map[int]role
+	base   int // offset of the line
+	lines  []formatted
+	depth  int
+	parens int
+	open   bool // the statement of the last line goes on
+
+	code strings.Builder // of the line
+	last lexer.Token     // of the line
 }
 
 // formatted is one line: code, then a comment.
@@ -56,59 +91,56 @@ type formatted struct {
 	indent  int
 	code    string
 	comment string
-	blank   bool // an empty line stands before it
+	blank   bool // an empty line
 }
 
 // layOut formats a text without syntax errors. It looks at the raw line ends, which the parser does not see all.
-func layOut(src string) string {
-	l := &layout{}
-	for i, line := range strings.Split(src, "\n") {
-		l.line(line, i)
+func layOut(f *File) string {
+	l := &layout{tree: rolesOf(f.Statements)}
+	for _, line := range strings.Split(f.Source, "\n") {
+		l.keep(l.line(line))
+		l.base += len(line) + 1
 	}
 	return l.String()
 }
 
 // line formats one line of the source. Tokens never span lines.
-func (l *layout) line(text string, _ int) {
-	s := &scanner{src: text, line: 1, column: 1}
-	l.current = formatted{}
-	closing := 0
-	started := false
-	for {
-		t := s.scan()
-		if t.Type == kindEOF {
-			break
+func (l *layout) line(text string) formatted {
+	s := newScanner("", text, defaultTokens)
+	l.code.Reset()
+	l.last = lexer.Token{}
+	x := formatted{indent: l.depth + l.parens}
+	continued := l.open && l.parens == 0
+	for t := s.scan(); t.Type != kindEOF; t = s.scan() {
+		if closes := isSign(&t, "}") || isSign(&t, ")"); closes && l.last.Type == 0 {
+			x.indent = max(0, x.indent-1)
+			continued = false
 		}
-		if !started {
-			started = true
-			if isSign(&t, "}") || isSign(&t, ")") {
-				closing = 1
-			}
-			l.current.indent = max(0, l.depth+l.parens-closing)
-			if l.open && l.parens == 0 && closing == 0 {
-				l.current.indent++
-			}
-			l.before, l.last = lexer.Token{}, lexer.Token{}
-		} else if spaced(l.before, l.last, t) {
-			l.current.code += " "
-		}
-		l.current.code += t.Value
+		t.Pos.Offset += l.base
+		l.word(t)
 		l.count(t)
-		l.before, l.last = l.last, t
 		s.last = t
 	}
+	if continued {
+		x.indent++
+	}
+	if l.last.Type != 0 {
+		l.open = l.last.Type == kindSign && goesOn(l.last.Value) && l.last.Value != "{"
+	}
 	if len(s.comments) > 0 {
-		l.current.comment = s.comments[0].Text
+		x.comment = s.comments[0].Text
 	}
-	if started {
-		l.open = l.last.Type == kindSign && continues[l.last.Value] && l.last.Value != "{"
-	} else if l.current.comment != "" {
-		l.current.indent = l.depth + l.parens
-		if l.open {
-			l.current.indent++
-		}
+	x.code = l.code.String()
+	return x
+}
+
+// word writes a token of the line.
+func (l *layout) word(t lexer.Token) {
+	if l.last.Type != 0 && l.spaced(t) {
+		l.code.WriteByte(' ')
 	}
-	l.keep(started)
+	l.code.WriteString(t.Value)
+	l.last = t
 }
 
 func (l *layout) count(t lexer.Token) {
@@ -124,78 +156,78 @@ func (l *layout) count(t lexer.Token) {
 	}
 }
 
-// keep adds the line, or remembers that it was empty.
-func (l *layout) keep(started bool) {
-	if !started && l.current.comment == "" {
-		if n := len(l.lines); n > 0 && !l.lines[n-1].blank {
+// keep adds a line. Of several empty lines one stays, and none at the start, behind an opening brace or before a closing one.
+func (l *layout) keep(x formatted) {
+	n := len(l.lines)
+	if x.code == "" && x.comment == "" {
+		if n > 0 && !l.lines[n-1].blank && !strings.HasSuffix(l.lines[n-1].code, "{") {
 			l.lines = append(l.lines, formatted{blank: true})
 		}
 		return
 	}
-	// No empty line behind an opening brace or before a closing one.
-	if n := len(l.lines); n > 1 && l.lines[n-1].blank {
-		opened := strings.HasSuffix(l.lines[n-2].code, "{")
-		if opened || strings.HasPrefix(l.current.code, "}") {
-			l.lines = l.lines[:n-1]
-		}
-	} else if n == 1 && l.lines[0].blank {
-		l.lines = nil
+	if n > 0 && l.lines[n-1].blank && strings.HasPrefix(x.code, "}") {
+		l.lines = l.lines[:n-1]
 	}
-	l.lines = append(l.lines, l.current)
+	l.lines = append(l.lines, x)
 }
 
 // String joins the lines; comments behind code in neighbouring lines stand in one column.
 func (l *layout) String() string {
+	if n := len(l.lines); n > 0 && l.lines[n-1].blank {
+		l.lines = l.lines[:n-1]
+	}
 	var b strings.Builder
 	for i := 0; i < len(l.lines); {
 		end, width := i, 0
 		for end < len(l.lines) && l.lines[end].code != "" && l.lines[end].comment != "" {
-			width = max(width, 2*l.lines[end].indent+utf8.RuneCountInString(l.lines[end].code))
+			width = max(width, l.lines[end].width())
 			end++
 		}
 		for end = max(end, i+1); i < end; i++ {
-			x := l.lines[i]
-			if x.blank {
-				if i+1 < len(l.lines) {
-					b.WriteByte('\n')
-				}
-				continue
-			}
-			text := strings.Repeat("  ", x.indent) + x.code
-			if x.code != "" && x.comment != "" {
-				text += strings.Repeat(" ", width-utf8.RuneCountInString(text)+2)
-			}
-			b.WriteString(text + x.comment + "\n")
+			l.lines[i].write(&b, width)
 		}
 	}
 	return b.String()
 }
 
-// spaced reports whether a blank stands between two neighbouring tokens; before is the one before them.
-func spaced(before, left, right lexer.Token) bool {
-	l, r := left.Value, right.Value
-	if left.Type != kindSign {
-		l = ""
+// width is the number of columns before the comment.
+func (x formatted) width() int { return 2*x.indent + utf8.RuneCountInString(x.code) }
+
+func (x formatted) write(b *strings.Builder, width int) {
+	if !x.blank {
+		b.WriteString(strings.Repeat("  ", x.indent))
+		b.WriteString(x.code)
+		if x.code != "" && x.comment != "" {
+			b.WriteString(strings.Repeat(" ", width-x.width()+2))
+		}
+		b.WriteString(x.comment)
 	}
-	if right.Type != kindSign {
-		r = ""
-	}
-	switch {
-	case r == "," || r == ")" || r == ":" || r == "." || l == "." || l == "(" || r == ".." || l == "..":
-		return false
-	case r == "(":
-		return !(left.Type == kindName && left.Pos.Offset+len(left.Value) == right.Pos.Offset)
-	case r == "^" || l == "^":
-		return false
-	case l == "-" || l == "+":
-		touches := left.Pos.Offset+len(left.Value) == right.Pos.Offset
-		apart := before.Pos.Offset+len(before.Value) < left.Pos.Offset
-		return isOperand(before) && !(touches && apart)
-	}
-	return true
+	b.WriteByte('\n')
 }
 
-// isOperand reports whether a sign behind the token is an operator between two values, not the sign of one.
-func isOperand(t lexer.Token) bool {
-	return t.Type == kindName || t.Type == kindNumber || t.Type == kindString || isSign(&t, ")")
+// spaced reports whether a blank stands before a token that is not the first of its line.
+func (l *layout) spaced(right lexer.Token) bool {
+	left, r := "", ""
+	if l.last.Type == kindSign {
+		left = l.last.Value
+	}
+	if right.Type == kindSign {
+		r = right.Value
+	}
+	touches := l.last.Pos.Offset+len(l.last.Value) == right.Pos.Offset
+	switch {
+	case left == "(" || left == "." || left == ".." || left == "^":
+		return false
+	case (left == "-" || left == "+") && l.tree[l.last.Pos.Offset] == literalSign:
+		return false
+	case left == "-" && l.tree[l.last.Pos.Offset] == unarySign:
+		return right.Type == kindNumber && !touches // together they would be a negative number
+	}
+	switch r {
+	case ",", ")", ":", ".", "..", "^":
+		return false
+	case "(":
+		return l.last.Type != kindName || l.tree[right.Pos.Offset] == innerParen
+	}
+	return true
 }

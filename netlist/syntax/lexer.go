@@ -2,6 +2,7 @@ package syntax
 
 import (
 	"io"
+	"slices"
 	"strings"
 	"unicode"
 	"unicode/utf8"
@@ -24,21 +25,43 @@ const (
 	kindBad  // what no token begins with, or a string that is not closed
 )
 
-// keywords are the words that are not names of circuit things.
-var keywords = map[string]bool{
-	"design": true, "use": true, "let": true, "set": true, "rail": true, "part": true, "block": true, "input": true, "output": true,
-	"match": true, "couple": true, "caution": true, "bench": true, "drive": true, "run": true, "expect": true, "plot": true, "vary": true,
-	"spread": true, "extremes": true, "at": true, "over": true, "within": true, "from": true, "with": true, "tol": true, "sigma": true,
-	"tc": true, "start": true,
+// isKeyword reports whether a word is not a name of a circuit thing.
+func isKeyword(word string) bool {
+	switch word {
+	case "at", "over", "within", "from", "with", "tol", "sigma", "tc", "start":
+		return true
+	}
+	return slices.Contains(statementWords(), word)
 }
 
-// signs are the punctuation marks, the longest first.
-var signs = []string{"--", "||", "..", ">=", "<=", "+-", "±", "+", "-", "*", "/", "^", "=", ">", "<", "(", ")", "{", "}", ",", ":", "."}
+// statementWords returns the first words of statements.
+func statementWords() []string { return words[:] }
 
-// continues are the signs after which a statement goes on in the next line.
-var continues = map[string]bool{
-	"--": true, ",": true, "=": true, "+": true, "-": true, "*": true, "/": true, "^": true, "||": true, ">=": true, "<=": true, ">": true, "<": true,
-	"+-": true, "±": true, "(": true, "{": true, "..": true, ":": true,
+var words = [...]string{
+	"design", "use", "let", "set", "rail", "part", "block", "input", "output", "match", "couple", "caution", "bench", "drive", "run", "expect",
+	"plot", "vary", "spread", "extremes",
+}
+
+// signLength is the length of the punctuation mark or operator that a text begins with, the longest that fits; 0 for none.
+func signLength(text string) int {
+	for _, sign := range [...]string{"--", "||", "..", ">=", "<=", "+-", "±"} {
+		if strings.HasPrefix(text, sign) {
+			return len(sign)
+		}
+	}
+	if strings.IndexByte("+-*/^=><(){},:.", text[0]) >= 0 {
+		return 1
+	}
+	return 0
+}
+
+// goesOn reports whether a statement goes on in the next line behind a sign.
+func goesOn(sign string) bool {
+	switch sign {
+	case "--", ",", "=", "+", "-", "*", "/", "^", "||", ">=", "<=", ">", "<", "+-", "±", "(", "{", "..", ":":
+		return true
+	}
+	return false
 }
 
 // tokens is the lexer's definition for the parser library.
@@ -60,7 +83,7 @@ func (t tokens) Lex(name string, r io.Reader) (lexer.Lexer, error) {
 
 // LexString never fails: what is no token becomes one of kind Bad.
 func (tokens) LexString(name, src string) (lexer.Lexer, error) {
-	return &scanner{name: name, src: src, line: 1, column: 1}, nil
+	return newScanner(name, src, defaultTokens), nil
 }
 
 // scanner cuts a text into tokens.
@@ -71,6 +94,12 @@ type scanner struct {
 	line, column int
 	last         lexer.Token // the last token given out
 	comments     []Comment
+	left         int // tokens that may still be given out
+	exhausted    bool
+}
+
+func newScanner(name, src string, tokens int) *scanner {
+	return &scanner{name: name, src: src, line: 1, column: 1, left: tokens}
 }
 
 func (s *scanner) position() lexer.Position {
@@ -91,8 +120,15 @@ func (s *scanner) advance(n int) {
 
 // Next returns the next token. It collapses line ends, leaves them out where a statement goes on, and puts one before a closing brace
 // and at the end of the text.
+//
+// Behind the last token that its limit allows it reports the end of the text.
 func (s *scanner) Next() (lexer.Token, error) {
 	t := s.scan()
+	if s.left--; s.left < 0 && t.Type != kindEOF {
+		s.exhausted = true
+		s.at = len(s.src)
+		t = lexer.Token{Type: kindEOF, Pos: t.Pos}
+	}
 	closing := t.Type == kindEOF || t.Type == kindSign && t.Value == "}"
 	if closing && !s.afterLine() {
 		// The end of the line is where the last token ended; the closing token is scanned again.
@@ -122,7 +158,7 @@ func (s *scanner) scan() lexer.Token {
 		case c == '\n':
 			pos := s.position()
 			s.advance(1)
-			if !s.afterLine() && !(s.last.Type == kindSign && continues[s.last.Value]) {
+			if !s.afterLine() && !(s.last.Type == kindSign && goesOn(s.last.Value)) {
 				return lexer.Token{Type: kindLine, Value: "\n", Pos: pos}
 			}
 		default:
@@ -170,15 +206,13 @@ func (s *scanner) measure() (lexer.TokenType, int) {
 		return stringLength(rest)
 	case r == '_' || unicode.IsLetter(r):
 		n := nameLength(rest)
-		if keywords[rest[:n]] {
+		if isKeyword(rest[:n]) {
 			return kindKeyword, n
 		}
 		return kindName, n
 	}
-	for _, sign := range signs {
-		if strings.HasPrefix(rest, sign) {
-			return kindSign, len(sign)
-		}
+	if n := signLength(rest); n > 0 {
+		return kindSign, n
 	}
 	return kindBad, max(1, size)
 }

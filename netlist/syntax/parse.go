@@ -3,6 +3,7 @@ package syntax
 import (
 	"errors"
 	"fmt"
+	"slices"
 	"strings"
 	"unicode/utf8"
 
@@ -11,56 +12,63 @@ import (
 
 // Limits protect the host from a text that is not meant well. Zero values stand for the defaults.
 type Limits struct {
-	Bytes int // of a file; 0: 16 MiB
-	Depth int // of blocks within blocks of statements; 0: 50
+	Bytes  int // of a text; 0: 16 MiB
+	Depth  int // of blocks within blocks; 0: 50
+	Tokens int // words, numbers, signs and line ends of a text; 0: 8 million
 }
 
 const (
-	defaultBytes = 16 << 20
-	defaultDepth = 50
+	defaultBytes  = 16 << 20
+	defaultDepth  = 50
+	defaultTokens = 8_000_000
 )
 
-// Parse reads a file. Every error is reported, in source order: after one the parser goes on in the next line at the same depth of braces.
-// The file holds what could be read even if there are errors.
-func Parse(name, src string, limits Limits) (*File, DiagnosticList) {
-	if limits.Bytes == 0 {
-		limits.Bytes = defaultBytes
+func (l Limits) resolved() Limits {
+	for _, x := range []struct {
+		limit *int
+		value int
+	}{{&l.Bytes, defaultBytes}, {&l.Depth, defaultDepth}, {&l.Tokens, defaultTokens}} {
+		if *x.limit == 0 {
+			*x.limit = x.value
+		}
 	}
-	if limits.Depth == 0 {
-		limits.Depth = defaultDepth
-	}
-	src = strings.TrimPrefix(src, "\uFEFF")
-	p := &parser{file: &File{Name: name, Source: src}, limits: limits}
-	if len(src) > limits.Bytes {
-		p.fileError(CodeTooLarge, fmt.Sprintf("the file has %d bytes; at most %d are read", len(src), limits.Bytes))
-		return p.file, p.list
-	}
-	if !utf8.ValidString(src) {
-		p.fileError(CodeNotText, "the file is not a text in UTF-8")
-		return p.file, p.list
-	}
-	s := &scanner{name: name, src: src, line: 1, column: 1}
-	lex, err := lexer.Upgrade(s)
-	if err != nil {
-		p.fileError(CodeNotText, err.Error())
-		return p.file, p.list
-	}
-	p.cursor = cursor{PeekingLexer: lex}
-	p.file.Statements = p.statements(0)
-	p.file.Comments = s.comments
-	return p.file, p.list.Sort()
+	return l
 }
 
-// ParseQuantity reads one quantity: an expression with at or over behind it.
-func ParseQuantity(name, src string) (Expr, DiagnosticList) {
-	p := &parser{file: &File{Name: name, Source: src}}
-	s := &scanner{name: name, src: src, line: 1, column: 1}
-	lex, err := lexer.Upgrade(s)
-	if err != nil {
-		p.fileError(CodeNotText, err.Error())
-		return nil, p.list
+// Parse reads a file. Every error is reported, in source order: after one the parser goes on in the next line at the same depth of braces.
+// The file holds what could be read even if there are errors. The parser takes every statement anywhere; which
+// belong where, and what names and units mean, is for package netlist to say.
+func Parse(name, src string, limits Limits) (*File, DiagnosticList) {
+	p := newParser(name, src, limits)
+	if p.usable() {
+		p.file.Statements = p.statements(0)
 	}
-	p.cursor = cursor{PeekingLexer: lex}
+	return p.finish()
+}
+
+// ParseStatements reads statements as Parse does, with the default limits, and reports those that do not belong: in a bench only set, let,
+// drive, run, vary, spread, extremes, expect and plot do, outside all but drive, run, vary, spread, extremes, expect and plot.
+func ParseStatements(name, src string, inBench bool) ([]Statement, DiagnosticList) {
+	p := newParser(name, src, Limits{})
+	if p.usable() {
+		p.file.Statements = p.statements(0)
+		p.misplaced(inBench)
+	}
+	f, list := p.finish()
+	return f.Statements, list
+}
+
+// ParseExpr reads one expression or quantity. Positions in it have no file name.
+func ParseExpr(src string) (Expr, DiagnosticList) { return ParseQuantity("", src) }
+
+// ParseQuantity reads one quantity: an expression, perhaps with at or over behind it. The expression is nil if there are errors.
+func ParseQuantity(name, src string) (Expr, DiagnosticList) {
+	p := newParser(name, src, Limits{})
+	if !p.usable() {
+		_, list := p.finish()
+		return nil, list
+	}
+	p.lines()
 	x, err := p.measure()
 	if err == nil {
 		p.lines()
@@ -70,7 +78,8 @@ func ParseQuantity(name, src string) (Expr, DiagnosticList) {
 	}
 	if err != nil {
 		p.report(err)
-		return nil, p.list
+		_, list := p.finish()
+		return nil, list
 	}
 	return x, nil
 }
@@ -78,27 +87,78 @@ func ParseQuantity(name, src string) (Expr, DiagnosticList) {
 // parser reads statements and collects errors.
 type parser struct {
 	cursor
-	file   *File
-	limits Limits
-	list   DiagnosticList
+	file    *File
+	scanner *scanner
+	limits  Limits
+	list    DiagnosticList
+	line    struct{ start, end int } // of the last error: offsets of its line
 }
 
+func newParser(name, src string, limits Limits) *parser {
+	src = strings.TrimPrefix(src, "\uFEFF")
+	p := &parser{file: &File{Name: name, Source: src}, limits: limits.resolved()}
+	p.scanner = newScanner(name, src, p.limits.Tokens)
+	return p
+}
+
+// usable cuts the text into tokens, unless it is too large or no text at all.
+func (p *parser) usable() bool {
+	src := p.file.Source
+	if len(src) > p.limits.Bytes {
+		p.fileError(CodeTooLarge, fmt.Sprintf("the file has %d bytes; at most %d are read", len(src), p.limits.Bytes))
+		return false
+	}
+	if !utf8.ValidString(src) {
+		p.fileError(CodeNotText, "the file is not a text in UTF-8")
+		return false
+	}
+	lex, err := lexer.Upgrade(p.scanner)
+	if err != nil {
+		p.fileError(CodeNotText, err.Error())
+		return false
+	}
+	if p.scanner.exhausted {
+		p.fileError(CodeTooLarge, fmt.Sprintf("the file has more than %d words, numbers and signs", p.limits.Tokens))
+		return false
+	}
+	p.cursor = cursor{PeekingLexer: lex}
+	p.file.Comments = p.scanner.comments
+	return true
+}
+
+func (p *parser) finish() (*File, DiagnosticList) { return p.file, p.list.Sort() }
+
 func (p *parser) fileError(code Code, message string) {
-	p.list = append(p.list, &Diagnostic{Code: code, Message: message, Span: Span{File: p.file.Name, Start: Position{Line: 1, Column: 1}, End: Position{Line: 1, Column: 1}}})
+	at := Position{Line: 1, Column: 1}
+	p.list = append(p.list, &Diagnostic{Code: code, Message: message, Span: Span{File: p.file.Name, Start: at, End: at}})
 }
 
 // report notes an error of a statement.
 func (p *parser) report(err error) {
+	f := p.fault(err)
+	start := place(f.token.Pos)
+	p.list = append(p.list, &Diagnostic{
+		Code: f.code, Message: f.text, Hint: f.hint, Line: p.lineOf(start.Offset),
+		Span: Span{File: p.file.Name, Start: start, End: past(&f.token)},
+	})
+}
+
+func (p *parser) fault(err error) *fault {
 	var f *fault
 	if !errors.As(err, &f) {
 		f = &fault{code: CodeUnexpected, token: *p.Peek(), text: err.Error()}
 	}
-	start := place(f.token.Pos)
-	end := past(&f.token)
-	p.list = append(p.list, &Diagnostic{
-		Code: f.code, Message: f.text, Hint: f.hint, Line: LineOf(p.file.Source, start.Offset),
-		Span: Span{File: p.file.Name, Start: start, End: end},
-	})
+	return f
+}
+
+// lineOf is LineOf that remembers the last line: a million errors may stand in one.
+func (p *parser) lineOf(offset int) string {
+	if !(p.line.start <= offset && offset <= p.line.end) || p.line.end == 0 {
+		line := LineOf(p.file.Source, offset)
+		p.line.start = strings.LastIndexByte(p.file.Source[:min(offset, len(p.file.Source))], '\n') + 1
+		p.line.end = p.line.start + len(line)
+	}
+	return p.file.Source[p.line.start:p.line.end]
 }
 
 // LineOf returns the line of a text that holds the byte at an offset.
@@ -129,6 +189,7 @@ func (p *parser) statements(depth int) []Statement {
 			p.take()
 			continue
 		}
+		before := p.MakeCheckpoint()
 		s, err := p.statement(depth)
 		if err == nil {
 			err = p.lineEnd()
@@ -138,7 +199,9 @@ func (p *parser) statements(depth int) []Statement {
 		}
 		if err != nil {
 			p.report(err)
-			p.skip()
+			if f := p.fault(err); !f.stay {
+				p.resume(before, f.token.Pos.Offset)
+			}
 		}
 	}
 }
@@ -149,7 +212,49 @@ func (p *parser) lineEnd() error {
 	if t.Type == kindLine || t.Type == kindEOF || isSign(&t, "}") {
 		return nil
 	}
-	return unexpected(t, "the end of the statement")
+	f := unexpected(t, "the end of the statement")
+	if p.operator(&t) > 0 || t.Type == kindNumber || isSign(&t, "(") {
+		f.hint = "between two parts of a path stands a node; `_` is one without a name"
+		if !p.afterPath() {
+			f.hint = ""
+		}
+	}
+	return f
+}
+
+// afterPath reports whether the token before the last one is the sign of a path.
+func (p *parser) afterPath() bool {
+	at := p.MakeCheckpoint().RawCursor()
+	return at >= 2 && isSign(&p.Range(at-2, at-1)[0], "--")
+}
+
+// resume goes on behind a statement that began at a checkpoint and had an error at an offset: at the end of the error's line at the same depth
+// of braces, or right there if a new statement begins the line, as behind a parenthesis that was never closed.
+func (p *parser) resume(before lexer.Checkpoint, offset int) {
+	p.LoadCheckpoint(before)
+	start := p.Peek().Pos.Offset
+	line := p.Peek().Pos.Line
+	for t := p.Peek(); t.Type != kindEOF && t.Pos.Offset < offset; t = p.Peek() {
+		line = p.take().Pos.Line
+	}
+	if t := p.Peek(); offset > start && t.Pos.Line > line && p.beginsStatement() {
+		return
+	}
+	p.skip()
+}
+
+// beginsStatement guesses whether a statement begins here.
+func (p *parser) beginsStatement() bool {
+	at := p.MakeCheckpoint().RawCursor()
+	t := p.Peek()
+	switch t.Type {
+	case kindKeyword:
+		return slices.Contains(statementWords(), t.Value)
+	case kindName:
+		next := p.Range(at+1, at+2)[0] // at least the end of the file
+		return isSign(&next, "--") || isSign(&next, "=")
+	}
+	return false
 }
 
 // skip goes to the end of the line at the same depth of braces.
@@ -177,361 +282,49 @@ func (p *parser) skip() {
 // statement reads one statement.
 func (p *parser) statement(depth int) (Statement, error) {
 	t := *p.Peek()
-	if t.Type == kindKeyword {
-		p.take()
-		switch t.Value {
-		case "part":
-			return p.part(t.Pos)
-		case "block":
-			return p.block(t.Pos, depth)
-		case "bench":
-			return p.bench(t.Pos, depth)
-		case "match":
-			return p.match(t.Pos)
+	if t.Type != kindKeyword {
+		if t.Type != kindName {
+			return nil, unexpected(t, "a statement")
 		}
-		if r, ok := rules()[t.Value]; ok {
-			return r(&p.cursor, t.Pos)
-		}
-		return nil, unexpected(t, "a statement")
-	}
-	if t.Type != kindName {
-		return nil, unexpected(t, "a statement")
-	}
-	return p.circuit(t.Pos)
-}
-
-// circuit reads a path or an instance, which both begin with a name.
-func (p *parser) circuit(start lexer.Position) (Statement, error) {
-	first, err := p.ref("a node or a name")
-	if err != nil {
-		return nil, err
-	}
-	switch t := *p.Peek(); {
-	case isSign(&t, "--"):
-		return p.path(start, first)
-	case isSign(&t, "="):
-		if len(first.Names) == 1 && first.Names[0].Name != "_" {
-			return p.instance(start, first.Names[0])
-		}
-		return nil, unexpected(t, "`--`")
-	default:
-		f := unexpected(t, "`--` (a path) or `=` (an instance)")
-		if len(first.Names) == 1 {
-			if word, ok := Nearest(first.Names[0].Name, statementWords); ok {
-				f.token, f.text = lexer.Token{Type: kindName, Value: first.Names[0].Name, Pos: start}, fmt.Sprintf("`%s` begins no statement", first.Names[0].Name)
-				f.hint = fmt.Sprintf("did you mean `%s`?", word)
-			}
-		}
-		return nil, f
-	}
-}
-
-// statementWords are the first words of statements.
-var statementWords = []string{
-	"design", "use", "let", "set", "rail", "part", "block", "input", "output", "match", "couple", "caution", "bench", "drive", "run", "expect",
-	"plot", "vary", "spread", "extremes",
-}
-
-// path reads -- part -- node -- part -- node behind the first node.
-func (p *parser) path(start lexer.Position, first Ref) (Statement, error) {
-	path := &Path{Elements: []Element{{Span: first.Span, Node: &first}}}
-	for isSign(p.Peek(), "--") {
-		p.take()
-		e, err := p.pathPart()
-		if err != nil {
-			return nil, err
-		}
-		path.Elements = append(path.Elements, e)
-		if err := p.sign("--"); err != nil {
-			return nil, err
-		}
-		node, err := p.ref("a node")
-		if err != nil {
-			return nil, err
-		}
-		path.Elements = append(path.Elements, Element{Span: node.Span, Node: &node})
-	}
-	path.Span = p.span(start)
-	return path, nil
-}
-
-// pathPart reads NAME value modifiers. A value is a literal, a name, a call, or an expression in parentheses.
-func (p *parser) pathPart() (Element, error) {
-	t := *p.Peek()
-	name, err := p.name("the name of a part")
-	if err != nil {
-		return Element{}, err
-	}
-	e := Element{Name: &name}
-	if v := *p.Peek(); isSign(&v, "--") || v.Type == kindLine {
-		return e, unexpected(v, "the value of "+name.Name)
-	}
-	if e.Value, err = p.operand(); err != nil {
-		return e, err
-	}
-	if v := *p.Peek(); v.Type == kindSign && power[v.Value] > 0 {
-		f := unexpected(v, "`--` or a modifier")
-		f.hint = "an expression as the value of a part stands in parentheses"
-		return e, f
-	}
-	if e.Modifiers, err = p.modifiers(); err != nil {
-		return e, err
-	}
-	e.Span = p.span(t.Pos)
-	return e, nil
-}
-
-// instance reads TYPE(pin: node, ...) with k = v, ... behind the equals sign.
-func (p *parser) instance(start lexer.Position, name Ident) (Statement, error) {
-	p.take()
-	s := &Instance{Name: name}
-	var err error
-	if s.Type, err = p.name("the name of a part or a block"); err != nil {
-		return nil, err
-	}
-	if err = p.sign("("); err != nil {
-		return nil, err
-	}
-	for p.lines(); !isSign(p.Peek(), ")"); p.lines() {
-		if len(s.Pins) > 0 {
-			if err = p.sign(","); err != nil {
-				return nil, err
-			}
-			p.lines()
-		}
-		pin, err := p.pin()
-		if err != nil {
-			return nil, err
-		}
-		s.Pins = append(s.Pins, pin)
+		return p.circuit(t.Pos)
 	}
 	p.take()
-	if t := p.Peek(); t.Type == kindKeyword && t.Value == "with" {
-		p.take()
-		if s.With, err = p.with(); err != nil {
-			return nil, err
-		}
+	switch t.Value {
+	case "part":
+		return p.part(t.Pos)
+	case "block":
+		return p.block(t.Pos, depth)
+	case "bench":
+		return p.bench(t.Pos, depth)
+	case "match":
+		return p.match(t.Pos)
+	case "extremes":
+		return &Extremes{Span: p.span(t.Pos)}, nil
 	}
-	s.Span = p.span(start)
-	return s, nil
+	if r, ok := rules()[t.Value]; ok {
+		return r(&p.cursor, t.Pos)
+	}
+	return nil, unexpected(t, "a statement")
 }
 
-func (p *parser) pin() (b PinBinding, err error) {
-	t := *p.Peek()
-	if b.Pin, err = p.name("the name of a pin"); err != nil {
-		return b, err
-	}
-	if err = p.sign(":"); err != nil {
-		return b, err
-	}
-	p.lines()
-	if b.Node, err = p.ref("a node"); err != nil {
-		return b, err
-	}
-	b.Span = p.span(t.Pos)
-	return b, nil
-}
-
-func (p *parser) with() ([]Assign, error) {
-	var list []Assign
-	for {
-		t := *p.Peek()
-		a := Assign{}
-		var err error
-		if a.Name, err = p.name("the name of a value"); err != nil {
-			return list, err
-		}
-		if err = p.sign("="); err != nil {
-			return list, err
-		}
-		if a.Value, err = p.expr(0); err != nil {
-			return list, err
-		}
-		a.Span = p.span(t.Pos)
-		list = append(list, a)
-		if !isSign(p.Peek(), ",") {
-			return list, nil
-		}
-		p.take()
-	}
-}
-
-// part reads NAME = FAMILY { parameter = value, ... }.
-func (p *parser) part(start lexer.Position) (Statement, error) {
-	s := &PartDecl{}
-	var err error
-	if s.Name, err = p.name("the name of a part"); err != nil {
-		return nil, err
-	}
-	if err = p.sign("="); err != nil {
-		return nil, err
-	}
-	if s.Base, err = p.name("a family or a part"); err != nil {
-		return nil, err
-	}
-	if isSign(p.Peek(), "{") {
-		s.Braces = true
-		err = p.entries(func() error {
-			t := *p.Peek()
-			e := Param{}
-			var err error
-			if e.Name, err = p.name("the name of a parameter"); err != nil {
-				return err
+// misplaced reports the statements at the top that do not belong in a bench, or outside one.
+func (p *parser) misplaced(inBench bool) {
+	for _, s := range p.file.Statements {
+		message := ""
+		switch s.(type) {
+		case *Let, *Set:
+		case *Drive, *Run, *Vary, *Spread, *Extremes, *Expect, *Plot:
+			if !inBench {
+				message = "this statement belongs in a bench"
 			}
-			if err = p.sign("="); err != nil {
-				return err
-			}
-			if e.Value, err = p.expr(0); err != nil {
-				return err
-			}
-			if e.Modifiers, err = p.modifiers(); err != nil {
-				return err
-			}
-			e.Span = p.span(t.Pos)
-			s.Params = append(s.Params, e)
-			return nil
-		})
-	}
-	s.Span = p.span(start)
-	return s, err
-}
-
-// entries reads { entry, entry ... }, each ended by a comma or the end of its line. After a bad one it goes on with the next.
-func (p *parser) entries(entry func() error) error {
-	open := *p.take()
-	for {
-		for p.Peek().Type == kindLine || isSign(p.Peek(), ",") {
-			p.take()
-		}
-		t := *p.Peek()
-		switch {
-		case t.Type == kindEOF:
-			return &fault{code: CodeOpenBrace, token: open, text: "this brace is not closed"}
-		case isSign(&t, "}"):
-			p.take()
-			return nil
-		}
-		err := entry()
-		if t := *p.Peek(); err == nil && !(t.Type == kindLine || isSign(&t, ",") || isSign(&t, "}")) {
-			err = unexpected(t, "`,` or the end of the line")
-		}
-		if err != nil {
-			p.report(err)
-			for t := p.Peek(); !(t.Type == kindLine || t.Type == kindEOF || isSign(t, "}")); t = p.Peek() {
-				p.take()
+		default:
+			if inBench {
+				message = "this statement does not belong in a bench"
 			}
 		}
-	}
-}
-
-// match reads A B ... within x, or A B { parameter within x, ... }.
-func (p *parser) match(start lexer.Position) (Statement, error) {
-	s := &Match{}
-	for p.Peek().Type == kindName {
-		r, err := p.ref("a part")
-		if err != nil {
-			return nil, err
+		if message != "" {
+			at := s.Place()
+			p.list = append(p.list, &Diagnostic{Code: CodeMisplaced, Message: message, Line: p.lineOf(at.Start.Offset), Span: at})
 		}
-		s.Members = append(s.Members, r)
 	}
-	var err error
-	switch t := *p.Peek(); {
-	case len(s.Members) == 0:
-		return nil, unexpected(t, "the parts that match")
-	case isSign(&t, "{"):
-		err = p.entries(func() error {
-			t := *p.Peek()
-			m := MatchParam{}
-			var err error
-			if m.Name, err = p.name("the name of a parameter"); err != nil {
-				return err
-			}
-			if m.Within, err = p.withinValue(); err != nil {
-				return err
-			}
-			m.Span = p.span(t.Pos)
-			s.Params = append(s.Params, m)
-			return nil
-		})
-	default:
-		s.Within, err = p.withinValue()
-	}
-	s.Span = p.span(start)
-	return s, err
-}
-
-func (p *parser) withinValue() (Expr, error) {
-	if t := *p.Peek(); t.Type != kindKeyword || t.Value != "within" {
-		return nil, unexpected(t, "`within`")
-	}
-	p.take()
-	return p.expr(0)
-}
-
-// block reads NAME(pin, ...) { ... }.
-func (p *parser) block(start lexer.Position, depth int) (Statement, error) {
-	s := &Block{}
-	var err error
-	if s.Name, err = p.name("the name of a block"); err != nil {
-		return nil, err
-	}
-	if err = p.sign("("); err != nil {
-		return nil, err
-	}
-	for p.lines(); !isSign(p.Peek(), ")"); p.lines() {
-		if len(s.Pins) > 0 {
-			if err = p.sign(","); err != nil {
-				return nil, err
-			}
-			p.lines()
-		}
-		pin, err := p.name("the name of a pin")
-		if err != nil {
-			return nil, err
-		}
-		s.Pins = append(s.Pins, pin)
-	}
-	p.take()
-	s.Body, err = p.body(depth)
-	s.Span = p.span(start)
-	return s, err
-}
-
-// bench reads NAME "title" { ... }. A bench may have any name, words of the language too.
-func (p *parser) bench(start lexer.Position, depth int) (Statement, error) {
-	s := &Bench{}
-	t := *p.Peek()
-	if t.Type != kindName && t.Type != kindKeyword {
-		return nil, unexpected(t, "the name of a bench")
-	}
-	p.take()
-	s.Name = Ident{Span: p.span(t.Pos), Name: t.Value}
-	if p.Peek().Type == kindString {
-		text, err := p.text()
-		if err != nil {
-			return nil, err
-		}
-		s.Title = &text
-	}
-	var err error
-	s.Body, err = p.body(depth)
-	s.Span = p.span(start)
-	return s, err
-}
-
-// body reads { statements }.
-func (p *parser) body(depth int) ([]Statement, error) {
-	open := *p.Peek()
-	if err := p.sign("{"); err != nil {
-		return nil, err
-	}
-	if depth+1 > p.limits.Depth {
-		return nil, &fault{code: CodeTooDeep, token: open, text: fmt.Sprintf("blocks nest more than %d deep", p.limits.Depth)}
-	}
-	list := p.statements(depth + 1)
-	if t := *p.Peek(); t.Type == kindEOF {
-		return list, &fault{code: CodeOpenBrace, token: open, text: "this brace is not closed"}
-	}
-	p.take()
-	return list, nil
 }

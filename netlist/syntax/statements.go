@@ -36,7 +36,7 @@ type (
 		Modifiers modsPart `parser:"@@"`
 	}
 	coupleGrammar struct {
-		Members []refPart `parser:"'(' @@ (',' @@)* ')' '='"`
+		Members []refPart `parser:"'(' Line* @@ (Line* ',' Line* @@)* Line* ')' '='"`
 		Value   exprPart  `parser:"@@"`
 	}
 	inputGrammar struct {
@@ -74,9 +74,6 @@ type (
 	spreadGrammar struct {
 		Samples exprPart  `parser:"@@"`
 		Seed    *exprPart `parser:"('seed' @@)?"`
-	}
-	extremesGrammar struct {
-		Nothing string `parser:"@Bad?"`
 	}
 	plotGrammar struct {
 		Quantities []quantPart `parser:"@@ (',' @@)*"`
@@ -217,8 +214,7 @@ var rules = sync.OnceValue(func() map[string]rule {
 		"spread": ruleOf(func(g *spreadGrammar, s Span) Statement {
 			return &Spread{Span: s, Samples: g.Samples.Expr, Seed: optional(g.Seed)}
 		}),
-		"extremes": ruleOf(func(_ *extremesGrammar, s Span) Statement { return &Extremes{Span: s} }),
-		"plot":     ruleOf(makePlot),
+		"plot": ruleOf(makePlot),
 		"expect": ruleOf(func(g *expectGrammar, s Span) Statement {
 			return &Expect{Span: s, Label: title(g.Label), Quantity: g.Quantity.Expr, Comparison: g.Limit.Comparison, Share: optional(g.Share)}
 		}),
@@ -261,8 +257,7 @@ func (p *comparisonPart) Parse(lex *lexer.PeekingLexer) error {
 
 func (c *cursor) comparison() (m Comparison, err error) {
 	t := *c.Peek()
-	operators := map[string]Operator{">=": AtLeast, ">": Above, "<=": AtMost, "<": Below, "=": Equal}
-	operator, ok := operators[t.Value]
+	operator, ok := operatorOf(t.Value)
 	switch {
 	case t.Type == kindKeyword && t.Value == "within":
 		c.take()
@@ -294,4 +289,20 @@ func (c *cursor) comparison() (m Comparison, err error) {
 	}
 	m.Span = c.span(t.Pos)
 	return m, err
+}
+
+func operatorOf(sign string) (Operator, bool) {
+	switch sign {
+	case ">=":
+		return AtLeast, true
+	case ">":
+		return Above, true
+	case "<=":
+		return AtMost, true
+	case "<":
+		return Below, true
+	case "=":
+		return Equal, true
+	}
+	return 0, false
 }
