@@ -1,7 +1,9 @@
 package devices
 
 import (
+	"maps"
 	"math"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
@@ -85,10 +87,11 @@ func checkDerivatives(t require.TestingT, b *bound, x []float64) {
 	}
 	for j := 1; j < b.n; j++ {
 		var df, dq [4][]float64
+		var dg, dc [4][][]float64
 		for k, step := range []float64{-2, -1, 1, 2} {
 			y := append([]float64(nil), x...)
 			y[j] += step * differenceStep
-			df[k], dq[k], _, _ = b.eval(y)
+			df[k], dq[k], dg[k], dc[k] = b.eval(y)
 		}
 		for i := 1; i < b.n; i++ {
 			slope := func(d *[4][]float64) (value, noise float64) {
@@ -99,15 +102,23 @@ func checkDerivatives(t require.TestingT, b *bound, x []float64) {
 				return (d[0][i] - 8*d[1][i] + 8*d[2][i] - d[3][i]) / (12 * differenceStep), 4e-16 * largest / differenceStep * 4
 			}
 			s, noise := slope(&df)
-			if d := math.Abs(s - g[i][j]); !(d <= differenceError*size(g, i)+noise+1e-18) {
+			if d := math.Abs(s - g[i][j]); smooth(&dg, g, i, j, size(g, i)) && !(d <= differenceError*size(g, i)+noise+1e-18) {
 				assert.Fail(t, "G is not the derivative of f", "row %d column %d at %v: %g, differences say %g", i, j, x, g[i][j], s)
 			}
 			s, noise = slope(&dq)
-			if d := math.Abs(s - c[i][j]); !(d <= differenceError*size(c, i)+noise+1e-28) {
+			if d := math.Abs(s - c[i][j]); smooth(&dc, c, i, j, size(c, i)) && !(d <= differenceError*size(c, i)+noise+1e-28) {
 				assert.Fail(t, "C is not the derivative of q", "row %d column %d at %v: %g, differences say %g", i, j, x, c[i][j], s)
 			}
 		}
 	}
+}
+
+// seamShare is the bend of a derivative over the stencil, as a share of its row, above which one of the model's seams lies within it (the
+// base resistance at zero base current, the knee of a depletion layer) and differences mean nothing: an exponential bends by (2h/V_T)^2, 4e-4 at 230 K.
+const seamShare = 2e-3
+
+func smooth(d *[4][][]float64, m [][]float64, i, j int, size float64) bool {
+	return math.Abs(d[0][i][j]-2*m[i][j]+d[3][i][j]) <= seamShare*size && math.Abs(d[1][i][j]-2*m[i][j]+d[2][i][j]) <= seamShare*size
 }
 
 // drawBipolar draws a transistor whose every parameter matters.
@@ -117,13 +128,14 @@ func drawBipolar(t *rapid.T) *bound {
 	set := func(name string, low, high float64) {
 		v[f.Index(name)] = math.Exp(rapid.Float64Range(math.Log(low), math.Log(high)).Draw(t, name))
 	}
-	for name, r := range map[string][2]float64{
+	ranges := map[string][2]float64{
 		"Is": {1e-16, 1e-13}, "betaF": {20, 800}, "betaR": {0.5, 20}, "emF": {0.98, 1.1}, "emR": {0.98, 1.1}, "earlyF": {15, 150}, "earlyR": {5, 50}, "kneeF": {5e-3, 0.2},
 		"kneeR": {2e-3, 0.1}, "leakE": {1e-17, 1e-13}, "emE": {1.3, 2}, "leakC": {1e-17, 1e-13}, "emC": {1.3, 2.2}, "rB": {20, 500}, "rBmin": {2, 19}, "rE": {0.1, 5}, "rC": {0.5, 50},
 		"capE": {1e-12, 5e-11}, "phiE": {0.6, 0.9}, "gradE": {0.2, 0.6}, "capC": {1e-12, 2e-11}, "phiC": {0.5, 0.9}, "gradC": {0.2, 0.6}, "splitC": {0.2, 0.9}, "capS": {1e-12, 1e-11},
 		"phiS": {0.5, 0.9}, "gradS": {0.2, 0.5}, "fcap": {0.3, 0.8}, "tauF": {1e-11, 1e-9}, "tauR": {1e-9, 1e-7}, "tauFbias": {0.5, 20}, "tauFvolt": {1, 20}, "tauFcurr": {1e-3, 0.2},
-	} {
-		set(name, r[0], r[1])
+	}
+	for _, name := range slices.Sorted(maps.Keys(ranges)) {
+		set(name, ranges[name][0], ranges[name][1])
 	}
 	if rapid.Bool().Draw(t, "base by current") {
 		set("rBknee", 1e-6, 1e-2)
@@ -140,8 +152,24 @@ func TestDerivativesOfTheBipolarTransistor(t *testing.T) {
 		for i := 1; i < b.n; i++ {
 			x[i] = rapid.Float64Range(-0.45, 0.45).Draw(t, "volts")
 		}
+		if baseCurrentTurns(b, x) {
+			return // the slope of the base resistance jumps where the base current changes its sign
+		}
 		checkDerivatives(t, b, x)
 	})
+}
+
+// baseCurrentTurns reports whether the base current changes its sign within the stencil of the differences, in a transistor whose base
+// resistance follows it.
+func baseCurrentTurns(b *bound, x []float64) bool {
+	s := b.stamp.(*bipolarStamp)
+	if s.base.invKnee == 0 {
+		return false
+	}
+	v1, v2 := s.sign*(x[s.bi]-x[s.ei]), s.sign*(x[s.bi]-x[s.ci])
+	const reach = 3 * differenceStep
+	low, high := s.at(v1-reach, v2-reach), s.at(v1+reach, v2+reach)
+	return low.ib <= 0 && high.ib >= 0
 }
 
 func TestDerivativesOfTheDiode(t *testing.T) {
