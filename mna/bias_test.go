@@ -367,3 +367,74 @@ func TestEmptyAndHeldSystems(t *testing.T) {
 	n.add("R", resistor(1), "a", "gnd")
 	require.Equal(t, []float64{0, 3}, n.bias().X)
 }
+
+// TestFloatingRings: no arithmetic hides that a ring of resistors is tied to nothing, whatever their values.
+func TestFloatingRings(t *testing.T) {
+	for ring := 3; ring < 40; ring++ {
+		n := newNet(t)
+		var want []string
+		for k := range ring {
+			want = append(want, fmt.Sprint("x", k))
+			n.add(fmt.Sprint("R", k), resistor(1e3*math.Pow(1.7, float64(k%11))/3), want[k], fmt.Sprint("x", (k+1)%ring))
+		}
+		n.add("C", capacitor{1e-9, 0}, "x0", "gnd")
+		_, err := n.build().Bias(context.Background(), BiasOptions{})
+		var e *SingularError
+		require.ErrorAs(t, err, &e, "a ring of %d", ring)
+		require.ElementsMatch(t, want, e.Floating)
+	}
+}
+
+// slowly is a conductance of 1 S that moves its evaluation by no more than 0.1 V at a time: the unknowns are right at once, and it says until the end that it was
+// not evaluated there.
+type slowly struct{}
+
+type slowlyStamp struct {
+	twoPin
+	memory int
+}
+
+func (slowly) Bind(b Binder) Stamp { return &slowlyStamp{bindTwo(b), b.Junction()} }
+
+func (s *slowlyStamp) Eval(e *Eval) {
+	v := s.volts(e)
+	at := v
+	if e.Limit {
+		at = math.Max(math.Min(v, e.Junctions[s.memory]+0.1), e.Junctions[s.memory]-0.1)
+		e.Limited = e.Limited || at != v
+	}
+	e.Junctions[s.memory] = at
+	s.current(e, v, 1)
+}
+
+// TestLimitedIsNotAccepted: as long as a device has not been evaluated where the unknowns are, nothing has been solved.
+func TestLimitedIsNotAccepted(t *testing.T) {
+	n := newNet(t)
+	n.add("I", current{level(2)}, "gnd", "a")
+	n.add("S", slowly{}, "a", "gnd")
+	s := n.build()
+	w := s.newWorkspace()
+	iterations, err := w.newton(context.Background(), &problem{drive: 1}, biasIterations)
+	require.NoError(t, err)
+	require.False(t, w.eval.Limited)
+	require.GreaterOrEqual(t, iterations, 20, "2 V in steps of 0.1 V")
+	near(t, 2, w.eval.X[n.u("a")], 1e-12)
+}
+
+// TestBestPointIsKept: a method that runs away does not spoil the start of the next.
+func TestBestPointIsKept(t *testing.T) {
+	n := newNet(t)
+	n.add("A", law{pins: 1, f: func(_ float64, x, f []float64, df [][]float64) {
+		f[0], df[0][0] = math.Atan(x[0]-1), 1/(1+(x[0]-1)*(x[0]-1))
+	}}, "a")
+	s := n.build()
+	c := s.newClimb(context.Background(), s.newWorkspace(), problem{drive: 1}, nil)
+	c.w.eval.X[1] = 12
+	c.best.save(&c.w.eval)
+	c.w.eval.X[1] = 1e9
+	c.compare()
+	require.Equal(t, 12.0, c.best.x[1])
+	c.w.eval.X[1] = 1.3
+	c.compare()
+	require.Equal(t, 1.3, c.best.x[1])
+}

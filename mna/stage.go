@@ -11,66 +11,111 @@ const (
 	stageStall        = 1e-7
 	// stageShare is the share of the allowed error that the iteration may leave.
 	stageShare = 0.02
-	// curvatureFrom is the size of an update beside the allowed error from which on its successor tells the curvature rather than
-	// rounding.
-	curvatureFrom = 0.1
-	// curvatureMemory is what an old, larger estimate keeps of its weight against a new one.
-	curvatureMemory = 0.8
-	// curvatureLife is the number of stages for which an estimate is trusted.
-	curvatureLife = 40
-	// curvatureReach is how much larger an update may be than the one that told the curvature.
-	curvatureReach = 4
 	// roundingShare is an update beside the unknown that is rounding.
 	roundingShare = 16 * 0x1p-52
 )
 
 // stageNewton is Newton's method on one stage of an integration, to the precision that the step needs.
 //
-// Measured in allowed errors, an update d leaves an error of about curvature d^2 (Newton-Mysovskikh; Deuflhard, Newton Methods for Nonlinear Problems,
-// 2004, theorem 2.2). The curvature is learnt whenever two updates follow each other; with it, one evaluation is enough for most
-// stages.
+// An update d leaves an error of about J^-1 (dJ/dx d) d / 2. How the Jacobian J changes is read off its change since the last evaluation, so that one
+// evaluation is enough for most stages (a secant form of the bounds in Deuflhard, Newton Methods for Nonlinear Problems, 2004, section 2.1).
 type stageNewton struct {
-	r         *integration
-	curvature float64 // infinite: not known
-	reach     float64 // the size of the update it was learnt from
-	age       int     // stages since then
+	r      *integration
+	last   []float64 // where the evaluation before was made, by unknown
+	g, c   []float64 // its derivatives, by slot
+	update []float64 // of the free unknowns
+	moved  float64   // from there to the present evaluation, in allowed errors
+	known  bool      // there was one that tells something
+}
+
+func newStageNewton(r *integration) stageNewton {
+	n := len(r.s.names)
+	return stageNewton{
+		r: r, last: make([]float64, n), update: make([]float64, n-r.s.first()),
+		g: make([]float64, r.s.slots), c: make([]float64, r.s.slots),
+	}
 }
 
 // solve solves p from eval.X. It leaves in eval the currents and charges of the solution.
 func (n *stageNewton) solve(p *problem) error {
 	w := n.r.w
-	w.sys.hold(w.eval.X, p.time, p.drive)
-	w.eval.Limit = true
+	e := &w.eval
+	w.sys.hold(e.X, p.time, p.drive)
+	e.Limit = true
 	last := 0.0
-	n.age++
 	for i := range stageIterations {
+		n.remember()
 		if err := w.step(p); err != nil {
 			return err
 		}
+		n.track()
 		size, finite := n.apply()
 		switch {
 		case !finite:
 			return errDiverged
-		case w.eval.Limited:
-			last = 0
+		case e.Limited:
+			n.known, last = false, 0
 			continue
-		case last >= curvatureFrom:
-			n.learn(size/(last*last), last)
-		case last > 0:
-			n.age = 0 // rounding tells nothing, but nor is anything wrong
-		}
-		if size <= stageShare || n.leaves(size) <= stageShare && (last > 0 || n.trusts(size)) {
-			w.carry()
+		case size <= stageShare, n.leaves(p.alpha, size) <= stageShare, last > 0 && size > stallRatio*last && n.movement() <= stall(i):
+			n.known = true
+			w.carry(n.update)
 			return nil
 		}
-		if last > 0 && size > stallRatio*last && w.movement() <= stall(i) {
-			w.carry()
-			return nil
-		}
+		n.known = true
 		w.repivot = last > 0 && size > stallRatio*last
 		last = size
 	}
 	return errSlow
+}
+
+// remember sets the derivatives of the last evaluation aside.
+func (n *stageNewton) remember() {
+	e := &n.r.w.eval
+	n.g, e.G = e.G, n.g
+	n.c, e.C = e.C, n.c
+}
+
+// track notes where the evaluation was made, how far that is from the one before, in allowed errors, and the update.
+func (n *stageNewton) track() {
+	x := n.r.w.eval.X
+	n.moved = 0
+	for k := n.r.s.first(); k < len(x); k++ {
+		n.moved = max(n.moved, math.Abs(x[k]-n.last[k])*n.r.perError[k])
+		n.last[k] = x[k]
+	}
+	copy(n.update, n.r.w.update)
+}
+
+// leaves estimates the error after an update of the given size, both in allowed errors.
+func (n *stageNewton) leaves(alpha, size float64) float64 {
+	w, first := n.r.w, n.r.s.first()
+	e := &w.eval
+	if !n.known || n.moved == 0 {
+		return math.Inf(1)
+	}
+	clear(w.update)
+	for k, g := range e.G {
+		row, col := int(w.sys.rows[k])-first, int(w.sys.cols[k])-first
+		if row < 0 || col < 0 {
+			continue
+		}
+		if change := g - n.g[k] + alpha*(e.C[k]-n.c[k]); change != 0 {
+			w.update[row] += change * n.update[col]
+		}
+	}
+	w.lu.Solve(w.update)
+	w.work.Solves++
+	left := 0.0
+	for i, d := range w.update {
+		left = max(left, math.Abs(d)*n.r.perError[first+i])
+	}
+	return left * size / n.moved / 2
+}
+
+// movement is the largest update beside the largest unknown of its kind.
+func (n *stageNewton) movement() float64 {
+	copy(n.r.w.update, n.update)
+	return n.r.w.movement()
 }
 
 // stall is the movement beside the largest unknowns up to which iteration i may have stopped getting nearer. In a step so short that charges dwarf
@@ -82,25 +127,10 @@ func stall(i int) float64 {
 	return stallShare
 }
 
-// leaves is the error after an update, in allowed errors.
-func (n *stageNewton) leaves(size float64) float64 { return n.curvature * size * size }
-
-// trusts reports whether the curvature is known well enough for an update that no other follows.
-func (n *stageNewton) trusts(size float64) bool {
-	return n.age < curvatureLife && size <= curvatureReach*n.reach
-}
-
-// forget makes the next stage learn the curvature anew: something has happened that it does not know.
+// forget makes the next stage learn anew how the derivatives change: something has happened in between.
 func (n *stageNewton) forget() {
-	n.curvature, n.reach, n.age = math.Inf(1), 0, 0
+	n.known = false
 	n.r.w.repivot = true
-}
-
-func (n *stageNewton) learn(curvature, size float64) {
-	if n.curvature > curvature && !math.IsInf(n.curvature, 1) {
-		curvature = math.Max(curvature, curvatureMemory*n.curvature)
-	}
-	n.curvature, n.reach, n.age = curvature, size, 0
 }
 
 // apply adds the update to the free unknowns and returns its size in allowed errors.
@@ -121,14 +151,14 @@ func (n *stageNewton) apply() (size float64, finite bool) {
 	return size, finite
 }
 
-// carry moves the currents and charges in eval along the last update: exact but for the square of a tiny step.
-func (w *workspace) carry() {
+// carry moves the currents and charges in eval along an update: exact but for the square of a tiny step.
+func (w *workspace) carry(update []float64) {
 	e, first := &w.eval, int32(w.sys.first())
 	for k, col := range w.sys.cols {
 		if col < first {
 			continue
 		}
-		row, d := w.sys.rows[k], w.update[col-first]
+		row, d := w.sys.rows[k], update[col-first]
 		e.F[row] += e.G[k] * d
 		e.Q[row] += e.C[k] * d
 	}

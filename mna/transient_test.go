@@ -553,3 +553,37 @@ func TestTransientOptionsAndEnds(t *testing.T) {
 	require.ErrorIs(t, err, context.Canceled)
 	require.Equal(t, 5, taken)
 }
+
+// TestStepsFollowTheScale: even where hardly any accuracy is asked for, and nothing moves, a signal is not stepped over.
+func TestStepsFollowTheScale(t *testing.T) {
+	n := newNet(t)
+	n.hold("in", sine{1e-12, 1e3})
+	n.hold("vp", level(5))
+	n.add("R", resistor(1e3), "vp", "a")
+	n.add("R2", resistor(1e9), "in", "a")
+	transient(t, n.build(), TransientOptions{Until: 10e-3, Accuracy: 0.9}, func(p *Step) {
+		require.LessOrEqual(t, p.T1-p.T0, 1e-3/stepsPerScale*(1+1e-9))
+	})
+}
+
+// TestStagesAreSolved: of the error that a waveform may have, Newton's method takes next to nothing. Without charges it is all there is at the ends
+// of the steps.
+func TestStagesAreSolved(t *testing.T) {
+	for _, accuracy := range []float64{1e-3, 1e-4, 1e-5, 1e-6} {
+		n := newNet(t)
+		n.hold("in", sine{3, 50})
+		n.add("R", resistor(1e3), "in", "a")
+		n.add("D", junction{1e-14, 0.0259, 0}, "a", "gnd")
+		s := n.build()
+		largest := 0.0
+		stats := transient(t, s, TransientOptions{Until: 0.1, Accuracy: accuracy}, func(p *Step) {
+			x := p.End()
+			v := x[n.u("a")]
+			slope := 1/1e3 + 1e-14/0.0259*math.Exp(v/0.0259)
+			left := (v-x[n.u("in")])/1e3 + 1e-14*math.Expm1(v/0.0259)
+			largest = math.Max(largest, math.Abs(left/slope))
+		})
+		t.Logf("accuracy %g: %.2e of the swing, %+v", accuracy, largest/3.7, *stats)
+		near(t, 0, largest/3.7, 0.05*accuracy)
+	}
+}

@@ -44,7 +44,7 @@ type trbdf2 struct {
 func newTRBDF2(r *integration) *trbdf2 {
 	s, free := r.s, len(r.s.names)-r.s.first()
 	return &trbdf2{
-		r: r, control: newControl(trbdf2Order + 1), newton: stageNewton{r: r}, constant: make([]float64, len(s.names)),
+		r: r, control: newControl(trbdf2Order + 1), newton: newStageNewton(r), constant: make([]float64, len(s.names)),
 		whole: make([]float64, free), left: make([]float64, free), noise: make([]float64, free),
 		earlierStart: s.newPoint(), earlierMiddle: s.newPoint(), start: s.newPoint(), middle: s.newPoint(), finish: s.newPoint(),
 	}
