@@ -11,9 +11,11 @@ type (
 	quantPart struct{ Expr }  // a quantity with at or over
 	namePart  struct{ Ident } // a name
 	refPart   struct{ Ref }   // a dotted name
+	pathPart  struct{ Text }  // a quoted text
 	textPart  struct{ Text }  // a quoted text, optional
 	modePart  struct{ Ident } // a word that is no keyword, optional
 	modsPart  struct{ List []Modifier }
+	refsPart  struct{ List []Ref } // nodes or parts in parentheses
 )
 
 // within runs f on the library's token stream.
@@ -34,10 +36,21 @@ func (n *namePart) Parse(lex *lexer.PeekingLexer) error {
 }
 
 func (r *refPart) Parse(lex *lexer.PeekingLexer) error {
-	if t := lex.Peek(); t.Type != kindName {
-		return participle.NextMatch
-	}
 	return within(lex, func(c *cursor) (err error) { r.Ref, err = c.ref("a name"); return err })
+}
+
+func (t *pathPart) Parse(lex *lexer.PeekingLexer) error {
+	return within(lex, func(c *cursor) (err error) { t.Text, err = c.text(); return err })
+}
+
+func (r *refsPart) Parse(lex *lexer.PeekingLexer) error {
+	return within(lex, func(c *cursor) error {
+		return c.listed(func() error {
+			x, err := c.node()
+			r.List = append(r.List, x)
+			return err
+		})
+	})
 }
 
 func (t *textPart) Parse(lex *lexer.PeekingLexer) error {

@@ -9,7 +9,7 @@ import (
 
 // circuit reads a path or an instance, which both begin with a name.
 func (p *parser) circuit(start lexer.Position) (Statement, error) {
-	first, err := p.ref("a node or a name")
+	first, err := p.node()
 	if err != nil {
 		return nil, err
 	}
@@ -54,7 +54,7 @@ func (p *parser) path(start lexer.Position, first Ref) (Statement, error) {
 		if err := p.sign("--"); err != nil {
 			return nil, err
 		}
-		node, err := p.ref("a node")
+		node, err := p.node()
 		if err != nil {
 			return nil, err
 		}
@@ -136,8 +136,7 @@ func (p *parser) pin() (b PinBinding, err error) {
 	if err = p.sign(":"); err != nil {
 		return b, err
 	}
-	p.lines()
-	if b.Node, err = p.ref("a node"); err != nil {
+	if b.Node, err = p.node(); err != nil {
 		return b, err
 	}
 	b.Span = p.span(t.Pos)
@@ -231,26 +230,34 @@ func (p *parser) entries(entry func() error) error {
 			f.stay = true
 			return f
 		}
+		before := p.MakeCheckpoint()
 		err := entry()
 		if t := *p.Peek(); err == nil && !p.entryEnd(&t) {
 			err = unexpected(t, "`,` or the end of the line")
 		}
 		if err != nil {
 			p.report(err)
-			for parens := 0; p.Peek().Type != kindEOF && (parens > 0 || !p.entryEnd(p.Peek())); {
-				switch t := p.take(); {
-				case isSign(t, "("):
-					parens++
-				case isSign(t, ")"):
-					parens = max(0, parens-1)
-				case t.Type == kindLine:
-					parens = 0
-				}
-				if p.Peek().Type == kindLine {
-					break
-				}
-			}
+			p.skipEntry(before, p.fault(err).token.Pos.Offset)
 		}
+	}
+}
+
+// skipEntry goes on behind an entry that began at a checkpoint and had an error at an offset: at the next comma outside parentheses, or
+// at the end of the line.
+func (p *parser) skipEntry(before lexer.Checkpoint, offset int) {
+	p.LoadCheckpoint(before)
+	parens := 0
+	for t := p.Peek(); t.Type != kindEOF; t = p.Peek() {
+		if t.Pos.Offset >= offset && p.entryEnd(t) && (parens == 0 || !isSign(t, ",")) {
+			return
+		}
+		switch {
+		case isSign(t, "("):
+			parens++
+		case isSign(t, ")"):
+			parens = max(0, parens-1)
+		}
+		p.take()
 	}
 }
 
@@ -388,8 +395,8 @@ func (p *parser) benchHead(s *Bench) error {
 
 // head reports the error of the head of a block if its body follows in the same line, and goes to the body; else it returns the error.
 func (p *parser) head(err error) error {
-	if err == nil {
-		return nil
+	if err == nil || p.Peek().Type == kindKeyword && p.beginsStatement() {
+		return err
 	}
 	before, end := p.MakeCheckpoint(), p.end
 	for t := p.Peek(); t.Type != kindLine && t.Type != kindEOF; t = p.Peek() {

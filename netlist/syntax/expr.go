@@ -12,11 +12,23 @@ import (
 type cursor struct {
 	*lexer.PeekingLexer
 	depth     int
+	parens    int      // parentheses that are open: line ends in them count for nothing
 	operators int      // of the expression being read
 	end       Position // just past the last token taken
 }
 
 func isSign(t *lexer.Token, value string) bool { return t.Type == kindSign && t.Value == value }
+
+// Peek returns the next token without consuming it. In parentheses it skips line ends: the lexer leaves them in, so that one
+// parenthesis that is never closed does not hide all later errors.
+func (c *cursor) Peek() *lexer.Token {
+	t := c.PeekingLexer.Peek()
+	for c.parens > 0 && t.Type == kindLine {
+		c.Next()
+		t = c.PeekingLexer.Peek()
+	}
+	return t
+}
 
 // take consumes a token.
 func (c *cursor) take() *lexer.Token {
@@ -40,13 +52,6 @@ func (c *cursor) sign(value string) error {
 	}
 	c.take()
 	return nil
-}
-
-// lines skips line ends, inside parentheses.
-func (c *cursor) lines() {
-	for c.Peek().Type == kindLine {
-		c.take()
-	}
 }
 
 // span closes a span that began at a place.
@@ -74,16 +79,20 @@ func (c *cursor) name(what string) (Ident, error) {
 	return Ident{Span: c.span(t.Pos), Name: t.Value}, nil
 }
 
-// ref reads a name or a dotted path of names; a lone low line is a node without a name.
+// node reads a node: a dotted name, or a low line for one without a name.
+func (c *cursor) node() (Ref, error) {
+	if t := *c.Peek(); t.Type == kindName && t.Value == "_" {
+		c.take()
+		at := c.span(t.Pos)
+		return Ref{Span: at, Names: []Ident{{Span: at, Name: "_"}}}, nil
+	}
+	return c.ref("a node")
+}
+
+// ref reads a name or a dotted path of names; what says what it names, for the message.
 func (c *cursor) ref(what string) (Ref, error) {
 	start := c.Peek().Pos
 	var r Ref
-	if t := c.Peek(); t.Type == kindName && t.Value == "_" {
-		c.take()
-		r.Names = []Ident{{Span: c.span(start), Name: "_"}}
-		r.Span = c.span(start)
-		return r, nil
-	}
 	for {
 		n, err := c.name(what)
 		if err != nil {
@@ -202,12 +211,12 @@ func (c *cursor) operand(least int) (Expr, error) {
 // paren reads a quantity in parentheses.
 func (c *cursor) paren(open lexer.Token) (Expr, error) {
 	c.take()
-	c.lines()
+	c.parens++
+	defer func() { c.parens-- }()
 	x, err := c.measure()
 	if err != nil {
 		return nil, err
 	}
-	c.lines()
 	if err := c.closing(open); err != nil {
 		return nil, err
 	}
@@ -266,16 +275,15 @@ func (c *cursor) listed(item func() error) error {
 	if err := c.sign("("); err != nil {
 		return err
 	}
-	first := true
-	for c.lines(); !isSign(c.Peek(), ")"); c.lines() {
+	c.parens++
+	defer func() { c.parens-- }()
+	for first := true; !isSign(c.Peek(), ")"); first = false {
 		if !first {
 			if !isSign(c.Peek(), ",") {
 				return c.closing(open)
 			}
 			c.take()
-			c.lines()
 		}
-		first = false
 		if err := item(); err != nil {
 			return err
 		}
@@ -310,7 +318,6 @@ func (c *cursor) argument() (Arg, error) {
 		id := Ident{Span: c.span(t.Pos), Name: t.Value}
 		if isSign(c.Peek(), ":") {
 			c.take()
-			c.lines()
 			a.Name = &id
 		} else {
 			c.LoadCheckpoint(checkpoint)
@@ -429,6 +436,6 @@ func (c *cursor) second() bool {
 	case t.Type == kindName:
 		return !isSign(c.Peek(), "=")
 	default:
-		return t.Type == kindNumber || isSign(t, "(") || isSign(t, "-")
+		return t.Type == kindNumber || isSign(t, "(") || isSign(t, "-") || isSign(t, "+")
 	}
 }

@@ -13,6 +13,7 @@ type fault struct {
 	code  Code
 	token lexer.Token
 	text  string
+	want  string // what could stand there, "" if that is not what is wrong
 	hint  string
 	stay  bool // the parser stands where the next statement begins
 }
@@ -25,7 +26,7 @@ var _ participle.Error = (*fault)(nil)
 
 // unexpected makes a fault that says what stands there and what could.
 func unexpected(t lexer.Token, want string) *fault {
-	f := &fault{code: CodeUnexpected, token: t, text: fmt.Sprintf("found %s, want %s", describe(t), want)}
+	f := &fault{code: CodeUnexpected, token: t, text: fmt.Sprintf("found %s, want %s", describe(t), want), want: want}
 	switch {
 	case t.Type == kindBad && strings.HasPrefix(t.Value, `"`):
 		f.code, f.text = CodeOpenString, "a text that begins here is not closed in its line"
@@ -33,6 +34,16 @@ func unexpected(t lexer.Token, want string) *fault {
 		f.code, f.text, f.hint = CodeBadCharacter, fmt.Sprintf("%q is no part of the language", t.Value), lookAlike(t.Value)
 	}
 	return f
+}
+
+// atLineEnd moves a fault from the first token of a line to the end of the token before it, where the statement breaks off.
+func (f *fault) atLineEnd(before *lexer.Token) *fault {
+	p := before.Pos
+	end := past(before)
+	p.Offset, p.Line, p.Column = end.Offset, end.Line, end.Column
+	moved := unexpected(lexer.Token{Type: kindLine, Pos: p}, f.want)
+	moved.hint = f.hint
+	return moved
 }
 
 // lookAlike suggests a character of the language for one that is taken for it, or for one of other habits.

@@ -216,15 +216,20 @@ func (l *layout) spaced(right lexer.Token) bool {
 	}
 	touches := l.last.Pos.Offset+len(l.last.Value) == right.Pos.Offset
 	switch {
-	case left == "(" || left == "." || left == ".." || left == "^":
+	case left == "(" || left == "." || left == "..":
 		return false
+	case left == "^":
+		return strings.HasSuffix(l.code.String(), " ^")
+	case r == "^": // 25ppm/K ^ 2 is the square of what 25ppm/K^2 is a literal of
+		return l.last.Type == kindNumber && numberLength(l.last.Value+"^2") > len(l.last.Value)
 	case (left == "-" || left == "+") && l.tree[l.last.Pos.Offset] == literalSign:
 		return false
 	case left == "-" && l.tree[l.last.Pos.Offset] == unarySign:
-		return right.Type == kindNumber && !touches // together they would be a negative number
+		// Together they would be a negative number, or the sign of a path.
+		return right.Type == kindNumber && !touches || r == "-" || r == "+"
 	}
 	switch r {
-	case ",", ")", ":", ".", "..", "^":
+	case ",", ")", ":", ".", "..":
 		return false
 	case "(":
 		return l.last.Type != kindName || l.tree[right.Pos.Offset] == innerParen

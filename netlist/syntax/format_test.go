@@ -50,8 +50,10 @@ func requireSameTree(t testing.TB, name, src string) {
 }
 
 func TestFormatKeepsMeaning(t *testing.T) {
+	g := grammar(t)
 	for name, src := range sources(t) {
 		requireSameTree(t, name, src)
+		assert.True(t, recognises(t, g, src), "the grammar does not know %s", name)
 	}
 }
 
@@ -59,9 +61,10 @@ func TestFormat(t *testing.T) {
 	for _, c := range []struct{ name, src, want string }{
 		{"empty", "", ""},
 		{"blank lines", "\n\n\nlet a=1\n\n\n\nlet b=2\n\n", "let a = 1\n\nlet b = 2\n"},
-		{"signs", "let a=- 40degC\nlet b=-40degC\nlet c=- x\nlet d=a-1\nlet e=a -1\nlet f=2V*-3\nlet g=-2^2\nlet h=- 2^2\nlet i = +3V\n",
-			"let a = - 40degC\nlet b = -40degC\nlet c = -x\nlet d = a - 1\nlet e = a - 1\nlet f = 2V * -3\nlet g = -2^2\nlet h = - 2^2\nlet i = +3V\n"},
+		{"signs", "let a=- 40degC\nlet b=-40degC\nlet c=- x\nlet d=a-1\nlet e=a -1\nlet f=2V*-3\nlet g=-2^2\nlet h=- 2^2\nlet i = +3V\nlet j=- -  x\nlet k=- -3\n",
+			"let a = - 40degC\nlet b = -40degC\nlet c = -x\nlet d = a - 1\nlet e = a - 1\nlet f = 2V * -3\nlet g = -2^2\nlet h = - 2^2\nlet i = +3V\nlet j = - -x\nlet k = - -3\n"},
 		{"operators", "let a=b||c^d/(e+f)*g ( 3 )\n", "let a = b || c^d / (e + f) * g(3)\n"},
+		{"powers of units", "let a=25ppm/K ^ 2\nlet b=25ppm/K^2\nlet c=3V ^ 2\nlet d=25ppm/K ^ 25\n", "let a = 25ppm/K ^ 2\nlet b = 25ppm/K^2\nlet c = 3V^2\nlet d = 25ppm/K ^ 25\n"},
 		{"path", "a--R1(3V)--b\nb  --  R2 -3V tol 1%--_--C1 2nF-- gnd\n", "a -- R1 (3V) -- b\nb -- R2 -3V tol 1% -- _ -- C1 2nF -- gnd\n"},
 		{"path over lines", "a -- R1 1ohm --\n b --\n\n# why\n R2 2ohm -- gnd\nlet x = 1\n", "a -- R1 1ohm --\n  b --\n\n  # why\n  R2 2ohm -- gnd\nlet x = 1\n"},
 		{"lists", "input i=(a,b)current\ncouple(L1,L2)=0.9\nblock k (a,b){\n}\nM=k(a :x , b:y)with r=1\n", "input i = (a, b) current\ncouple (L1, L2) = 0.9\nblock k(a, b) {\n}\nM = k(a: x, b: y) with r = 1\n"},
@@ -69,6 +72,7 @@ func TestFormat(t *testing.T) {
 		{"one line", "bench b{expect volts(x)>=1V}\nmatch Q1 Q2{Is within 2%,betaF within 6%}\n", "bench b { expect volts(x) >= 1V }\nmatch Q1 Q2 { Is within 2%, betaF within 6% }\n"},
 		{"entries", "part p=npn{ Is=1fA,betaF=2\nrB=3ohm\n}\n", "part p = npn { Is = 1fA, betaF = 2\n  rB = 3ohm\n}\n"},
 		{"parentheses", "let a=f(1,\n2,\n(3+\n4)\n)\n", "let a = f(1,\n  2,\n  (3 +\n    4)\n)\n"},
+		{"lines in parentheses", "let a=f(1\n+2\n,-\n3)\nlet b=(\n1 # one\n\n\n)*2\n", "let a = f(1\n  + 2\n  , -\n  3)\nlet b = (\n  1  # one\n\n) * 2\n"},
 		{"comments", "#a\nlet a=1#b\nlet bbb=2   #  c\n\nlet c=3 # d\n  # e\nbench b { # f\n# g\nextremes#h\n# i\n}# j", "#a\nlet a = 1    #b\nlet bbb = 2  #  c\n\nlet c = 3  # d\n# e\nbench b {  # f\n  # g\n  extremes  #h\n  # i\n}  # j\n"},
 		{"line ends", "let a = 1\r\nlet b = 2\r\n", "let a = 1\nlet b = 2\n"},
 		{"byte-order mark", "\uFEFFlet a = 1\n", "let a = 1\n"},

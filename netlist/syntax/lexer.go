@@ -133,7 +133,7 @@ func (s *scanner) Next() (lexer.Token, error) {
 	if closing && !s.afterLine() {
 		// The end of the line is where the last token ended; the closing token is scanned again.
 		s.rewind(t)
-		t = lexer.Token{Type: kindLine, Value: "\n", Pos: t.Pos}
+		t = lexer.Token{Type: kindLine, Pos: t.Pos} // no text: it is not in the source
 	}
 	s.last = t
 	return t, nil
@@ -273,7 +273,9 @@ func numberLength(text string) int {
 		below := nameLength(text[i+1:])
 		end := i + 1 + below
 		if strings.HasPrefix(text[end:], "^2") {
-			if squared := end + 2; unit.IsQuotient(text[start:i], text[i+1:squared]) {
+			squared := end + 2
+			more := nameLength(text[squared:]) > 0 || strings.HasPrefix(text[squared:], ".") && !strings.HasPrefix(text[squared:], "..")
+			if !more && unit.IsQuotient(text[start:i], text[i+1:squared]) {
 				return squared
 			}
 		}

@@ -172,6 +172,13 @@ func LineOf(src string, offset int) string {
 	return src[start : offset+end]
 }
 
+// lines skips line ends.
+func (p *parser) lines() {
+	for p.Peek().Type == kindLine {
+		p.take()
+	}
+}
+
 // statements reads until the closing brace of its block, or until the end of the file at depth 0.
 func (p *parser) statements(depth int) []Statement {
 	var list []Statement
@@ -198,10 +205,7 @@ func (p *parser) statements(depth int) []Statement {
 			list = append(list, s)
 		}
 		if err != nil {
-			p.report(err)
-			if f := p.fault(err); !f.stay {
-				p.resume(before, f.token.Pos.Offset)
-			}
+			p.resume(before, p.fault(err))
 		}
 	}
 }
@@ -228,17 +232,42 @@ func (p *parser) afterPath() bool {
 	return at >= 2 && isSign(&p.Range(at-2, at-1)[0], "--")
 }
 
-// resume goes on behind a statement that began at a checkpoint and had an error at an offset: at the end of the error's line at the same depth
-// of braces, or right there if a new statement begins the line, as behind a parenthesis that was never closed.
-func (p *parser) resume(before lexer.Checkpoint, offset int) {
-	p.LoadCheckpoint(before)
-	start := p.Peek().Pos.Offset
-	line := p.Peek().Pos.Line
-	for t := p.Peek(); t.Type != kindEOF && t.Pos.Offset < offset; t = p.Peek() {
-		line = p.take().Pos.Line
-	}
-	if t := p.Peek(); offset > start && t.Pos.Line > line && p.beginsStatement() {
+// resume reports the fault of a statement that began at a checkpoint and goes on behind it: at the end of the fault's line at the same depth of
+// braces, or right there if a new statement begins the line, as behind a parenthesis that was never closed or a sign with nothing behind it.
+func (p *parser) resume(before lexer.Checkpoint, f *fault) {
+	if f.stay {
+		p.report(f)
 		return
+	}
+	p.LoadCheckpoint(before)
+	var line, last *lexer.Token // before the line and before the fault
+	atName := before
+	for t := p.Peek(); t.Type != kindEOF && t.Pos.Offset < f.token.Pos.Offset; t = p.Peek() {
+		if t.Type != kindLine {
+			if last != nil && last.Pos.Line < t.Pos.Line {
+				line, atName = last, p.MakeCheckpoint()
+			}
+			last = t
+		}
+		p.take()
+	}
+	t := p.Peek()
+	switch {
+	case last != nil && t.Pos.Line > last.Pos.Line:
+		begins := p.beginsStatement()
+		if f.code == CodeUnexpected && f.want != "" && (t.Type == kindLine || t.Type == kindEOF || begins && t.Type == kindKeyword) {
+			f = f.atLineEnd(last)
+		}
+		p.report(f)
+		if begins {
+			return
+		}
+	case line != nil && p.MakeCheckpoint().RawCursor() == atName.RawCursor()+1 && (isSign(t, "=") || isSign(t, "--")):
+		p.LoadCheckpoint(atName)
+		p.report(&fault{code: CodeUnexpected, token: *line, text: fmt.Sprintf("the statement breaks off behind %s", describe(*line))})
+		return
+	default:
+		p.report(f)
 	}
 	p.skip()
 }

@@ -330,7 +330,7 @@ func expression(x Expr, least int) string {
 	case *Paren:
 		return "(" + expression(x.X, 0) + ")"
 	case *Unary:
-		return enclosed("- "+expression(x.X, unaryPower), least > unaryPower)
+		return enclosed(prefixed(x, unaryPower), least > unaryPower)
 	case *Binary:
 		return binaryText(x, least)
 	case *Call:
@@ -362,11 +362,15 @@ func binaryText(x *Binary, least int) string {
 	if n, ok := x.X.(*Number); ok {
 		negative = strings.HasPrefix(n.Text, "-") && p > unaryPower
 	}
-	second := expression(x.Y, right)
-	if u, ok := x.Y.(*Unary); ok { // a sign behind an operator binds as that does
-		second = "- " + expression(u.X, max(right, unaryPower))
+	return enclosed(enclosed(expression(x.X, left), negative)+" "+x.Op+" "+prefixed(x.Y, right), p < least)
+}
+
+// prefixed writes x behind an operator or a sign, where a sign needs no parentheses: it binds as that does.
+func prefixed(x Expr, least int) string {
+	if u, ok := x.(*Unary); ok {
+		return "- " + prefixed(u.X, max(least, unaryPower))
 	}
-	return enclosed(enclosed(expression(x.X, left), negative)+" "+x.Op+" "+second, p < least)
+	return expression(x, least)
 }
 
 func callText(x *Call) string {

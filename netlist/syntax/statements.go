@@ -17,7 +17,7 @@ type (
 		Title *textPart `parser:"@@?"`
 	}
 	useGrammar struct {
-		Path textPart `parser:"@@"`
+		Path pathPart `parser:"@@"`
 	}
 	cautionGrammar struct {
 		Kind namePart `parser:"@@"`
@@ -36,17 +36,17 @@ type (
 		Modifiers modsPart `parser:"@@"`
 	}
 	coupleGrammar struct {
-		Members []refPart `parser:"'(' Line* @@ (Line* ',' Line* @@)* Line* ')' '='"`
-		Value   exprPart  `parser:"@@"`
+		Members refsPart `parser:"@@ '='"`
+		Value   exprPart `parser:"@@"`
 	}
 	inputGrammar struct {
-		Name    namePart  `parser:"@@ '='"`
-		Nodes   []refPart `parser:"'(' Line* @@ (Line* ',' Line* @@)* Line* ')'"`
-		Current bool      `parser:"@'current'?"`
+		Name    namePart `parser:"@@ '='"`
+		Nodes   refsPart `parser:"@@"`
+		Current bool     `parser:"@'current'?"`
 	}
 	outputGrammar struct {
 		Name  namePart  `parser:"@@ '='"`
-		Nodes []refPart `parser:"'(' Line* @@ (Line* ',' Line* @@)* Line* ')'"`
+		Nodes refsPart  `parser:"@@"`
 		Rest  *exprPart `parser:"('rest' @@)?"`
 	}
 	driveGrammar struct {
@@ -69,7 +69,7 @@ type (
 		To     *exprPart  `parser:"( '..' @@"`
 		By     *exprPart  `parser:"  ( 'by' @@"`
 		Count  *exprPart  `parser:"  | 'count' @@ )"`
-		More   []exprPart `parser:"| (',' @@)* )"`
+		More   []exprPart `parser:"| (',' @@)+ )?"`
 	}
 	spreadGrammar struct {
 		Samples exprPart  `parser:"@@"`
@@ -91,9 +91,9 @@ type (
 // rule reads one simple statement behind its first word.
 type rule func(c *cursor, start lexer.Position) (Statement, error)
 
-// ruleOf joins a grammar and what makes a statement of it.
+// ruleOf joins a grammar and what makes a statement of it. No lookahead: once a clause has begun, an error in it is its own.
 func ruleOf[G any](make func(g *G, s Span) Statement) rule {
-	parser := participle.MustBuild[G](participle.Lexer(tokens{}))
+	parser := participle.MustBuild[G](participle.Lexer(tokens{}), participle.UseLookahead(0))
 	return func(c *cursor, start lexer.Position) (Statement, error) {
 		g, err := parser.ParseFromLexer(c.PeekingLexer, participle.AllowTrailing(true))
 		if err != nil {
@@ -140,12 +140,8 @@ func wanted(message string) string {
 		switch {
 		case strings.HasPrefix(first, "ExprPart"), strings.HasPrefix(first, "QuantPart"):
 			first = "an expression"
-		case strings.HasPrefix(first, "RefPart"), strings.HasPrefix(first, "NamePart"), strings.HasPrefix(first, "ModePart"):
-			first = "a name"
-		case strings.HasPrefix(first, "TextPart"):
-			first = "a text in quotes"
-		case strings.HasPrefix(first, "ComparisonPart"):
-			first = "a comparison"
+		case strings.HasPrefix(first, "ModePart"):
+			first = "a mode"
 		case strings.HasPrefix(first, `"`):
 			word, _, _ := strings.Cut(first[1:], `"`)
 			first = "`" + word + "`"
@@ -174,14 +170,6 @@ func optional(e *exprPart) Expr {
 	return e.Expr
 }
 
-func refs(parts []refPart) []Ref {
-	var r []Ref
-	for _, p := range parts {
-		r = append(r, p.Ref)
-	}
-	return r
-}
-
 // rules are the simple statements by their first word, built once.
 var rules = sync.OnceValue(func() map[string]rule {
 	return map[string]rule{
@@ -198,13 +186,13 @@ var rules = sync.OnceValue(func() map[string]rule {
 			return &Rail{Span: s, Name: g.Name.Ident, Value: g.Value.Expr, Modifiers: g.Modifiers.List}
 		}),
 		"couple": ruleOf(func(g *coupleGrammar, s Span) Statement {
-			return &Couple{Span: s, Members: refs(g.Members), Value: g.Value.Expr}
+			return &Couple{Span: s, Members: g.Members.List, Value: g.Value.Expr}
 		}),
 		"input": ruleOf(func(g *inputGrammar, s Span) Statement {
-			return &Input{Span: s, Name: g.Name.Ident, Nodes: refs(g.Nodes), Current: g.Current}
+			return &Input{Span: s, Name: g.Name.Ident, Nodes: g.Nodes.List, Current: g.Current}
 		}),
 		"output": ruleOf(func(g *outputGrammar, s Span) Statement {
-			return &Output{Span: s, Name: g.Name.Ident, Nodes: refs(g.Nodes), Rest: optional(g.Rest)}
+			return &Output{Span: s, Name: g.Name.Ident, Nodes: g.Nodes.List, Rest: optional(g.Rest)}
 		}),
 		"drive": ruleOf(makeDrive),
 		"run": ruleOf(func(g *runGrammar, s Span) Statement {

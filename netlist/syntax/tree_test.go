@@ -72,6 +72,7 @@ func shapeOfFields(v reflect.Value) string {
 }
 
 func TestStatementTrees(t *testing.T) {
+	g := grammar(t)
 	for _, c := range []struct{ src, want string }{
 		{`design d "a \"t\" \\"`, `(Design d "a \"t\" \\")`},
 		{`design rest`, `(Design rest)`},
@@ -91,6 +92,9 @@ func TestStatementTrees(t *testing.T) {
 		{`e -- Hcell -220mV -- c`, `(Path [(Element e) (Element Hcell -220mV) (Element c)])`},
 		{`Q1 = pair(b: bp, c: _, e: A1.x)`, `(Instance Q1 pair pins:[(PinBinding pin:b bp) (PinBinding pin:c _) (PinBinding pin:e A1.x)])`},
 		{"M1 = mirror(in: x\n, out: y\n) with R = 1ohm,\n S = 2 * R", `(Instance M1 mirror pins:[(PinBinding pin:in x) (PinBinding pin:out y)] with:[(Assign R 1ohm) (Assign S (* 2 R))])`},
+		{"Q1 = pair(\nb\n:\nx\n)", `(Instance Q1 pair pins:[(PinBinding pin:b x)])`},
+		{"block k(a\n, b\n) {\n}", `(Block k pins:[a b])`},
+		{"input i = (\na\n, b\n) current", `(Input i nodes:[a b] current)`},
 		{"block k(a, b) {\n let r = 1\n}", `(Block k pins:[a b] [(Let r 1)])`},
 		{`couple (L1, A.L2) = 0.995`, `(Couple members:[L1 A.L2] 0.995)`},
 		{`match R1 R2 R3 within 0.2%`, `(Match members:[R1 R2 R3] within:0.2%)`},
@@ -123,10 +127,12 @@ func TestStatementTrees(t *testing.T) {
 		require.NoError(t, list.Err(), c.src)
 		require.Len(t, f.Statements, 1, c.src)
 		assert.Equal(t, c.want, shape(f.Statements[0]), c.src)
+		assert.True(t, recognises(t, g, c.src+"\n"), "the grammar does not know %s", c.src)
 	}
 }
 
 func TestExpressionTrees(t *testing.T) {
+	g := grammar(t)
 	for _, c := range []struct{ src, want string }{
 		{"a + b * c ^ d", "(+ a (* b (^ c d)))"},
 		{"a ^ b ^ c", "(^ a (^ b c))"},
@@ -165,6 +171,9 @@ func TestExpressionTrees(t *testing.T) {
 		{"1.2V/us", "1.2V/us"},
 		{"3mV/V", "3mV/V"},
 		{"25ppm/K^2", "25ppm/K^2"},
+		{"25ppm/K^25", "(^ 25ppm/K 25)"},
+		{"25ppm/K^2.5", "(^ 25ppm/K 2.5)"},
+		{"f(0ppm/K^2..3ppm/K^2)", "(Call f [(Arg (Range low:0ppm/K^2 high:3ppm/K^2))])"},
 		{"3V/s2", "(/ 3V s2)"},
 		{"3V/K^2", "(^ 3V/K 2)"},
 		{"3V / us", "(/ 3V us)"},
@@ -172,6 +181,12 @@ func TestExpressionTrees(t *testing.T) {
 		{"f()", "(Call f)"},
 		{"f(\n a\n ,\n b\n)", "(Call f [(Arg a) (Arg b)])"},
 		{"(\n a +\n b\n)", "(Paren (+ a b))"},
+		// A line goes on inside parentheses, wherever it ends.
+		{"(\n-\na\n+ b\n* (c\n)\n)\n", "(Paren (+ (- a) (* b (Paren c))))"},
+		{"f\n", "f"},
+		{"f(a\n.b\n, n\n:\n1Hz\n..\n2Hz\n)", "(Call f [(Arg a.b) (Arg n (Range low:1Hz high:2Hz))])"},
+		{"(cmrr\nat\n1Hz\n)", "(Paren (Measure cmrr at:1Hz))"},
+		{"(1\n-2)", "(Paren (- 1 2))"},
 		{"sine(1V, 50Hz, phase: 30deg, at: 1us, over:2s, from: 1, within: 3, start: 2)", "(Call sine [(Arg 1V) (Arg 50Hz) (Arg phase 30deg) (Arg at 1us) (Arg over 2s) (Arg from 1) (Arg within 3) (Arg start 2)])"},
 		{"hiss(3nV/rtHz, band: 1Hz..10kHz)", "(Call hiss [(Arg 3nV/rtHz) (Arg band (Range low:1Hz high:10kHz))])"},
 		{`samples("f.csv", column: 2)`, `(Call samples [(Arg "f.csv") (Arg column 2)])`},
@@ -185,6 +200,7 @@ func TestExpressionTrees(t *testing.T) {
 		x, list := ParseExpr(c.src)
 		require.NoError(t, list.Err(), c.src)
 		assert.Equal(t, c.want, shape(x), c.src)
+		assert.True(t, recognises(t, g, "plot f("+c.src+")\n"), "the grammar does not know %s", c.src)
 	}
 }
 
