@@ -328,3 +328,27 @@ Q1 = p(b: x, c: x, e: gnd)
 	assert.InDelta(t, 0.62, at(27), 0.05)
 	assert.InDelta(t, -2e-3, (at(37)-at(17))/20, 0.3e-3)
 }
+
+// TestLateTrainOfPulses runs a train that begins later than the run: closed form, an RC that charges and discharges completely.
+func TestLateTrainOfPulses(t *testing.T) {
+	v := bench(t, `
+a -- R1 1kohm -- x -- C1 1nF -- gnd
+input i = (a)
+bench b {
+  drive i signal = pulse(-60mV, 60mV, at: 100us, width: 500us, edge: 1us, every: 1ms)
+  run 3ms
+  expect volts(x) <= 1V
+}
+`, "value(volts(x), at: 90us)", "value(volts(x), at: 590us)", "value(volts(x), at: 2.09ms)", "crosses(volts(x), 0V, 5)")
+	// 1e-4 of a swing of 120 mV is the accuracy asked for.
+	const allowed = 12e-6
+	assert.InDelta(t, -60e-3, v[0].Float(), allowed)
+	assert.InDelta(t, 60e-3, v[1].Float(), allowed)
+	assert.InDelta(t, -60e-3, v[2].Float(), allowed)
+	// The ramp lasts T = 1 us/0.8; behind one pole the output stands at V1 at its end and goes on as an exponential of 1 us to 60 mV.
+	const tau, ramp = 1e-6, 1.25e-6
+	slope := 120e-3 / ramp
+	v1 := -60e-3 + slope*(ramp-tau*(1-math.Exp(-ramp/tau)))
+	want := 2.1e-3 + ramp + tau*math.Log((60e-3-v1)/60e-3)
+	assert.InDelta(t, want, v[3].Float(), allowed/(60e-3/tau), "the error of the level over the slope there")
+}

@@ -91,21 +91,22 @@ func (l *linear) Corner(t float64) float64 {
 // cornerRounding is the share of a time within which two corners are one: a few roundings of sums of periods.
 const cornerRounding = 1e-14
 
-// Scale returns the length of the straight piece at t, in which nothing changes until the next corner.
+// Scale returns a few times the length of the straight piece that begins at t or holds it: nothing changes within it, and it is not
+// to be stepped over. It is the whole length, not what is left of it, so that steps do not shrink towards the next corner.
 func (l *linear) Scale(t float64) float64 {
+	if l.period > 0 && t < l.start {
+		return inf
+	}
 	c := l.Corner(t)
 	if math.IsInf(c, 1) {
 		return inf
 	}
 	u, _ := l.local(t + (c-t)/2)
 	i := sort.Search(len(l.t), func(i int) bool { return l.t[i] > u })
-	if l.period == 0 && (i == 0 || i == len(l.t)) {
+	if i == 0 || i == len(l.t) || l.v[i] == l.v[i-1] {
 		return inf
 	}
-	if i > 0 && i < len(l.t) && l.v[i] == l.v[i-1] {
-		return inf
-	}
-	return linearPieceScale * max(c-t, math.Abs(t)*1e-15)
+	return linearPieceScale * (l.t[i] - l.t[i-1])
 }
 
 // Points is a signal through points, straight between them and constant outside.
