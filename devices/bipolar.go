@@ -308,12 +308,13 @@ func (q *bipolar) diffusion(c *core, v2 float64) (charge, d1, d2 float64) {
 		return 0, 0, 0
 	}
 	tau, t1, t2 := 1.0, 0.0, 0.0
-	if q.tauBias > 0 && c.fi > 0 {
+	if q.tauBias > 0 {
 		share, ds := 1.0, 0.0
 		if q.tauCurr > 0 {
-			sum := c.fi + q.tauCurr
+			// I_F is never below -Is; the guard keeps the pole at -tauFcurr away if a part has Is beyond it.
+			sum, slope := guard(c.fi+q.tauCurr, q.tauCurr/2)
 			share = c.fi / sum
-			ds = q.tauCurr / (sum * sum) * c.fg
+			ds = (sum - c.fi*slope) / (sum * sum) * c.fg
 		}
 		x, y := expLinear(v2 * q.invTauVolt)
 		tau += q.tauBias * share * share * x
