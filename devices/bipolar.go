@@ -103,7 +103,7 @@ func bipolarFamily(name, title string, polarity float64) Family {
 		Source: "Gummel & Poon, Bell Syst. Tech. J. 49, 1970; Getreu, Modeling the Bipolar Transistor, 1976; Massobrio & Antognetti, Semiconductor Device Modeling, 1993",
 		Pins: []Pin{
 			{Name: "c", Meaning: "collector"}, {Name: "b", Meaning: "base"}, {Name: "e", Meaning: "emitter"},
-			{Name: "s", Meaning: "substrate", Optional: true, Joins: "gnd"},
+			{Name: "s", Meaning: "substrate", Optional: true, Joins: "gnd", Insulated: true},
 		},
 		Params: bipolarParams(),
 		Operating: []OperatingQuantity{

@@ -27,6 +27,8 @@ type Pin struct {
 	Optional bool
 	// Joins names what an optional pin is joined to when it is not written: another pin's name, or "gnd".
 	Joins string
+	// Insulated says that no direct current flows through the pin: it fixes no node's voltage.
+	Insulated bool
 }
 
 // OperatingQuantity describes one operating quantity of a family's devices.

@@ -1,7 +1,7 @@
 package netlist
 
 import (
-	"slices"
+	"sync"
 
 	"poise/netlist/unit"
 )
@@ -18,6 +18,7 @@ type MetricInfo struct {
 	Pair, PairOutput bool
 	// Ports it depends on.
 	Input, Output bool
+	Rest          bool // an output with one node needs its rest
 	Complex       bool
 	unit          func(current bool) unit.Dimension
 }
@@ -68,7 +69,7 @@ func Metrics() []MetricInfo {
 		{Name: "peak_gain", Meaning: "largest magnitude of dm_gain", Needs: MayHaveRange, Input: true, Output: true, unit: transfer},
 		{Name: "bias_current", Meaning: "mean current into the input pins at rest", Input: true, unit: always(unit.Current)},
 		{Name: "offset_current", Meaning: "difference of the currents into the input pins at rest", Input: true, Pair: true, unit: always(unit.Current)},
-		{Name: "offset", Meaning: "differential input that brings the output to its rest, or to zero for a pair", Input: true, Output: true, unit: drive},
+		{Name: "offset", Meaning: "differential input that brings the output to its rest, or to zero for a pair", Input: true, Output: true, Rest: true, unit: drive},
 	}
 }
 
@@ -125,38 +126,20 @@ func Reducers() []ReducerInfo {
 	}
 }
 
-// laterNames are quantities of the language that this version does not compute.
-var laterNames = []string{"noise_out", "noise_in", "noise_out_rms", "noise_in_rms", "noise_figure", "thd", "imd", "rectified"}
-
-// laterFamilies are families of devices that this version does not have.
-var laterFamilies = []string{"njfet", "pjfet", "nmos", "pmos", "opamp", "switch"}
-
-func metricInfo(name string) (MetricInfo, bool) {
-	all := Metrics()
-	i := slices.IndexFunc(all, func(m MetricInfo) bool { return m.Name == name })
-	if i < 0 {
-		return MetricInfo{}, false
+// metrics returns the catalogue by name.
+var metrics = sync.OnceValue(func() map[string]*MetricInfo {
+	m := map[string]*MetricInfo{}
+	for _, x := range Metrics() {
+		m[x.Name] = &x
 	}
-	return all[i], true
-}
+	return m
+})
 
-func reducerInfo(name string) (ReducerInfo, bool) {
-	all := Reducers()
-	i := slices.IndexFunc(all, func(r ReducerInfo) bool { return r.Name == name })
-	if i < 0 {
-		return ReducerInfo{}, false
+// reducers returns the catalogue by name.
+var reducers = sync.OnceValue(func() map[string]*ReducerInfo {
+	m := map[string]*ReducerInfo{}
+	for _, x := range Reducers() {
+		m[x.Name] = &x
 	}
-	return all[i], true
-}
-
-// quantityNames lists what a quantity may begin with, for suggestions.
-func quantityNames() []string {
-	names := []string{"volts", "amps", "watts", "quiescent", "gain", "abs", "phase", "real", "imag"}
-	for _, m := range Metrics() {
-		names = append(names, m.Name)
-	}
-	for _, r := range Reducers() {
-		names = append(names, r.Name)
-	}
-	return names
-}
+	return m
+})

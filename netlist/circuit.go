@@ -84,6 +84,7 @@ type Vary struct {
 	Unit   string    // SI unit of the values, as written in the language; "" for a number
 	Span   syntax.Span
 
+	target    syntax.Ref
 	dimension unit.Dimension
 }
 

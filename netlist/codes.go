@@ -23,6 +23,8 @@ const (
 	CodeFile       syntax.Code = "P217" // a file that cannot be read
 	CodeNoDesign   syntax.Code = "P218" // no design line
 	CodeLimit      syntax.Code = "P219" // more than the loader allows
+	CodeMatch      syntax.Code = "P220" // parts that cannot match
+	CodeNoCircuit  syntax.Code = "P221" // no circuit
 
 	CodeSingle   syntax.Code = "P230" // a node with a single connection
 	CodeFloating syntax.Code = "P231" // a node without a path for direct current to gnd
@@ -41,6 +43,7 @@ const (
 	CodeUnused    syntax.Code = "P301" // a warning: a part, let or block that nothing uses
 	CodeMagnitude syntax.Code = "P302" // a warning: a value of an unlikely size
 	CodeNothing   syntax.Code = "P303" // a warning: a bench that expects and plots nothing
+	CodeShort     syntax.Code = "P304" // a warning: a part whose ends are one node
 )
 
 // CodeInfo describes a code. In the example the problem's place is marked with « before it.
@@ -87,6 +90,8 @@ func Codes() []CodeInfo {
 		{CodeFile, "a file cannot be read", circuitOf("use «\"nowhere.poise\"\n")},
 		{CodeNoDesign, "the file does not say what it is", "«rail vp = 9V\nvp -- R1 1kohm -- gnd\n"},
 		{CodeLimit, "more than the loader allows", ""},
+		{CodeMatch, "parts that cannot match", circuitOf("vp -- C1 1nF -- gnd\nmatch R1 «C1 within 1%\n")},
+		{CodeNoCircuit, "the file describes no circuit", "«design d\n"},
 		{CodeSingle, "a node has a single connection", circuitOf("vp -- R2 1kohm -- «x\n")},
 		{CodeFloating, "a node has no path for direct current to gnd", circuitOf("vp -- C1 1nF -- «x -- C2 1nF -- gnd\n")},
 		{CodeLoop, "voltage sources and inductors form a loop", circuitOf("vp -- «V1 5V -- gnd\n")},
@@ -101,6 +106,7 @@ func Codes() []CodeInfo {
 		{CodeLater, "part of the language, not of this version", circuitOf("bench b {\n  «spread 100\n  expect volts(vp) >= 1V\n}\n")},
 		{CodeUnused, "a warning: nothing uses this part, let or block", circuitOf("let «x = 3\n")},
 		{CodeMagnitude, "a warning: a value of an unlikely size", circuitOf("vp -- R2 «10mohm -- gnd\n")},
-		{CodeNothing, "a warning: a bench that expects and plots nothing", circuitOf("«bench b {\n}\n")},
+		{CodeNothing, "a warning: a bench that expects and plots nothing", circuitOf("bench «b {\n}\n")},
+		{CodeShort, "a warning: both ends of a part are at one node", circuitOf("vp -- «R2 1kohm -- vp\n")},
 	}
 }

@@ -43,13 +43,13 @@ func (d *Design) Families() []devices.Family { return slices.Clone(d.program.fam
 // Setup returns the circuit as written, as a set-up without run and expectations: inputs are driven by 0.
 // The error is a DiagnosticList.
 func (d *Design) Setup() (*Setup, error) {
-	e := d.program.reading().elaborate(nil, false)
-	if err := e.list.Sort().Err(); err != nil {
+	r := &reporter{sources: d.program.sources}
+	e := d.program.begin(r, nil, nil)
+	e.elaborate()
+	if err := r.list.Sort().Err(); err != nil {
 		return nil, err
 	}
-	s := &Setup{Circuit: e.circuit}
-	s.measurer = &measurer{e: e, scope: e.file.scope}
-	return s, nil
+	return &Setup{Circuit: e.circuit, measurer: &measurer{elaborator: e, scope: e.file.scope}}, nil
 }
 
 // Circuit returns the flat circuit as written. The error is a DiagnosticList.
@@ -67,8 +67,10 @@ func (b *Bench) Setup(point []float64) (*Setup, error) {
 	if len(point) != len(b.Vary) {
 		return nil, fmt.Errorf("the grid of the bench %s has %d axes, not %d", b.Name, len(b.Vary), len(point))
 	}
-	f := b.design.program.reading().setup(b, point)
-	if err := f.e.list.Sort().Err(); err != nil {
+	p := b.design.program
+	r := &reporter{sources: p.sources}
+	f := p.setupIn(r, b, point, false)
+	if err := r.list.Sort().Err(); err != nil {
 		return nil, err
 	}
 	return f.setup, nil
@@ -76,31 +78,21 @@ func (b *Bench) Setup(point []float64) (*Setup, error) {
 
 // Quantity resolves a quantity written in the language for this set-up. The error is a DiagnosticList.
 func (s *Setup) Quantity(text string) (Quantity, error) {
-	const name = "quantity"
+	const name = "(quantity)"
 	x, list := syntax.ParseQuantity(name, text)
 	if err := list.Err(); err != nil {
 		return nil, err
 	}
-	e := *s.measurer.e
-	e.list = nil
-	p := *e.program
-	p.sources = map[string]string{name: text}
-	e.program = &p
+	r := &reporter{sources: map[string]string{name: text}}
+	e := *s.measurer.elaborator
+	e.reporter, e.learning = r, false
 	m := *s.measurer
-	m.e = &e
+	m.elaborator = &e
 	q, ok := m.quantity(x)
 	if !ok {
-		return nil, e.list.Sort().Err()
+		return nil, r.list.Sort().Err()
 	}
 	return q, nil
-}
-
-// reading returns a view of the program for one elaboration: what is only noted while a file is checked is apart.
-func (p *program) reading() *program {
-	q := *p
-	q.used = map[string]bool{}
-	q.list = nil
-	return &q
 }
 
 // Format writes a file in the one form that all files share. A text with syntax errors comes back unchanged, with a DiagnosticList.

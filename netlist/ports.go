@@ -1,41 +1,26 @@
 package netlist
 
 import (
-	"fmt"
-
 	"poise/netlist/syntax"
 	"poise/netlist/unit"
 )
 
 // ports elaborates inputs and outputs.
 func (e *elaborator) ports() {
-	names := map[string]bool{}
+	names := map[string]syntax.Span{}
 	for _, s := range e.program.inputs {
-		if names[s.Name.Name] || !e.portNodes(s.Name, s.Nodes) {
-			if names[s.Name.Name] {
-				e.fail(CodeDuplicate, s.Name.Place(), fmt.Sprintf("there is a port called %s already", s.Name.Name))
-			}
+		nodes, ok := e.portNodes(s.Name, s.Nodes)
+		if !e.claimPort(names, s.Name) || !ok {
 			continue
 		}
-		names[s.Name.Name] = true
-		in := Input{Name: s.Name.Name, Current: s.Current, Span: s.Span}
-		for _, r := range s.Nodes {
-			in.Nodes = append(in.Nodes, e.nodes[r.String()])
-		}
-		e.circuit.Inputs = append(e.circuit.Inputs, in)
+		e.circuit.Inputs = append(e.circuit.Inputs, Input{Name: s.Name.Name, Nodes: nodes, Current: s.Current, Span: s.Span})
 	}
 	for _, s := range e.program.outputs {
-		if names[s.Name.Name] || !e.portNodes(s.Name, s.Nodes) {
-			if names[s.Name.Name] {
-				e.fail(CodeDuplicate, s.Name.Place(), fmt.Sprintf("there is a port called %s already", s.Name.Name))
-			}
+		nodes, ok := e.portNodes(s.Name, s.Nodes)
+		if !e.claimPort(names, s.Name) || !ok {
 			continue
 		}
-		names[s.Name.Name] = true
-		out := Output{Name: s.Name.Name, Span: s.Span}
-		for _, r := range s.Nodes {
-			out.Nodes = append(out.Nodes, e.nodes[r.String()])
-		}
+		out := Output{Name: s.Name.Name, Nodes: nodes, Span: s.Span}
 		if s.Rest != nil {
 			out.Rest, out.HasRest = e.wanted(e.file.scope, s.Rest, unit.Voltage, "the rest of "+s.Name.Name)
 		}
@@ -43,24 +28,41 @@ func (e *elaborator) ports() {
 	}
 }
 
-// portNodes checks the nodes of a port and counts them as connected.
-func (e *elaborator) portNodes(name syntax.Ident, nodes []syntax.Ref) bool {
-	if len(nodes) < 1 || len(nodes) > 2 {
-		return e.fail(CodeArguments, name.Place(), fmt.Sprintf("the port %s has %d nodes, want one or two", name.Name, len(nodes)))
+// claimPort reserves the name of a port. A rail or a source of the same name could not be told from it in `drive`.
+func (e *elaborator) claimPort(names map[string]syntax.Span, n syntax.Ident) bool {
+	if at, twice := names[n.Name]; twice {
+		return e.fail(CodeDuplicate, n.Place(), "there is a port called %s already, in line %d", n.Name, at.Start.Line)
 	}
-	ok := true
-	for i, r := range nodes {
-		n, known := e.nodes[r.String()]
+	names[n.Name] = n.Place()
+	_, isRail := e.rail[n.Name]
+	if _, isElement := e.element[n.Name]; isRail || isElement {
+		return e.fail(CodeDuplicate, n.Place(), "there is a rail or part called %s already", n.Name)
+	}
+	return true
+}
+
+// portNodes checks the nodes of a port and counts them as connected.
+func (e *elaborator) portNodes(name syntax.Ident, refs []syntax.Ref) (nodes []int, ok bool) {
+	if len(refs) < 1 || len(refs) > 2 {
+		return nil, e.fail(CodeArguments, name.Place(), "the port %s has %d nodes, want one or two", name.Name, len(refs))
+	}
+	ok = true
+	for _, r := range refs {
+		n, known := e.lookUp(r.String())
 		switch {
 		case !known:
-			ok = e.unknownNode(r.Place(), r.String())
+			ok = e.unknownNode(r, r.String())
 		case n == 0:
 			ok = e.fail(CodeArguments, r.Place(), "a port against gnd is written with one node")
-		case i == 1 && n == e.nodes[nodes[0].String()]:
-			ok = e.fail(CodeArguments, r.Place(), "both nodes of the port are the same")
+		case len(nodes) == 1 && n == nodes[0]:
+			ok = e.fail(CodeArguments, r.Place(), "both nodes of the port %s are %s", name.Name, r)
 		default:
 			e.degree[n]++
+			nodes = append(nodes, n)
 		}
 	}
-	return ok
+	if !ok {
+		e.suspect(append(nodes, 0)...)
+	}
+	return nodes, ok
 }

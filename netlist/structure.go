@@ -8,28 +8,172 @@ import (
 	"poise/netlist/syntax"
 )
 
-// structure looks for what makes a circuit unsolvable whatever its values: before anything is solved, by the user's names.
-func (e *elaborator) structure() {
-	c := e.circuit
+// structure looks for what makes a circuit unsolvable whatever its values are: before anything is solved, by the user's names. setUp
+// says in which set-up, for messages; it may be empty.
+func (e *elaborator) structure(setUp string) {
 	e.singles()
-	e.loops(c)
-	e.floating(c)
+	stiff := e.stiff()
+	e.loops(stiff, setUp)
+	e.floating(stiff, setUp)
 }
 
 // singles reports nodes that only one thing touches.
 func (e *elaborator) singles() {
-	for i := 1; i < len(e.circuit.Nodes); i++ {
-		switch {
-		case e.degree[i] >= 2:
-		case e.degree[i] == 1:
-			e.fail(CodeSingle, e.mention[i], fmt.Sprintf("only one thing is connected to the node %s", e.circuit.Nodes[i]))
-		default:
-			e.fail(CodeSingle, e.mention[i], fmt.Sprintf("nothing is connected to the node %s", e.circuit.Nodes[i]))
+	for n := 1; n < len(e.circuit.Nodes); n++ {
+		if e.degree[n] >= 2 {
+			continue
 		}
+		name := e.circuit.Nodes[n]
+		things := "only one thing is"
+		if e.degree[n] == 0 {
+			things = "nothing is"
+		}
+		e.failHint(e.singleHint(name), CodeSingle, e.mention[n], "%s connected to %s", things, nodeText(name))
 	}
 }
 
-// union is a forest of sets of nodes (Tarjan, Efficiency of a good but not linear set union algorithm, J. ACM 22, 1975).
+// nodeText names a node for a message.
+func nodeText(name string) string {
+	if name[strings.LastIndexByte(name, '.')+1] == '_' {
+		return "the node without a name"
+	}
+	return "the node " + name
+}
+
+// singleHint explains a lonely node inside a block that is called like one outside, or suggests the name that was meant.
+func (e *elaborator) singleHint(name string) string {
+	dot := strings.LastIndexByte(name, '.')
+	local := name[dot+1:]
+	if dot >= 0 {
+		if _, outside := e.nodes[local]; outside {
+			return fmt.Sprintf("a block does not see the node %s of the outside: give the block a pin for it", local)
+		}
+		return ""
+	}
+	if local[0] == '_' {
+		return ""
+	}
+	return e.guess(name, func(yield func(string) bool) {
+		for i := 1; i < len(e.circuit.Nodes); i++ {
+			if e.degree[i] >= 2 && !yield(e.circuit.Nodes[i]) {
+				return
+			}
+		}
+	})
+}
+
+// edge is something that fixes the voltage between two nodes.
+type edge struct {
+	a, b int
+	name string
+	at   syntax.Span
+}
+
+// stiff lists what fixes voltages: rails, driven inputs, voltage sources, inductors.
+func (e *elaborator) stiff() []edge {
+	c := e.circuit
+	var list []edge
+	for _, r := range c.Rails {
+		list = append(list, edge{r.Node, 0, "the rail " + r.Name, r.Span})
+	}
+	for _, in := range c.Inputs {
+		if in.Open || in.Current {
+			continue
+		}
+		for _, n := range in.Nodes {
+			list = append(list, edge{n, 0, "the input " + in.Name, in.Span})
+		}
+	}
+	for i := range c.Elements {
+		if x := &c.Elements[i]; x.Kind == KindVoltageSource || x.Kind == KindInductor {
+			list = append(list, edge{x.Nodes[0], x.Nodes[1], x.Name, x.Span})
+		}
+	}
+	return list
+}
+
+// witnessed bounds the loops whose members are sought: each costs a search.
+const witnessed = 100
+
+// loops reports each source or inductor that closes a loop with others, and the shortest such loop.
+func (e *elaborator) loops(stiff []edge, setUp string) {
+	sets := newUnion(len(e.circuit.Nodes))
+	var near [][]int32 // edges at each node
+	found := 0
+	for i, x := range stiff {
+		if sets.join(x.a, x.b) {
+			continue
+		}
+		if x.a == x.b {
+			e.fail(CodeLoop, x.at, "both ends of %s are at %s", x.name, nodeText(e.circuit.Nodes[x.a]))
+			continue
+		}
+		names := []string{x.name}
+		if found++; found <= witnessed {
+			if near == nil {
+				near = adjacent(stiff, len(e.circuit.Nodes))
+			}
+			for _, j := range shortest(stiff, near, i) {
+				if name := stiff[j].name; !slices.Contains(names, name) {
+					names = append(names, name)
+				}
+			}
+		}
+		e.fail(CodeLoop, x.at, "%s%s: nothing limits the current in a loop of voltage sources and inductors", loopText(names), setUp)
+	}
+}
+
+func loopText(names []string) string {
+	switch len(names) {
+	case 1:
+		return names[0] + " closes a loop with others"
+	case 2:
+		return names[0] + " lies across " + names[1]
+	}
+	return names[0] + " closes a loop with " + strings.Join(names[1:], ", ")
+}
+
+// adjacent lists the edges at each node.
+func adjacent(edges []edge, nodes int) [][]int32 {
+	near := make([][]int32, nodes)
+	for i, x := range edges {
+		near[x.a] = append(near[x.a], int32(i))
+		near[x.b] = append(near[x.b], int32(i))
+	}
+	return near
+}
+
+// shortest finds the fewest edges that join the ends of edge k without it, breadth first.
+func shortest(edges []edge, near [][]int32, k int) []int {
+	from, to := edges[k].a, edges[k].b
+	came := map[int]int{from: -1}
+	for queue := []int{from}; len(queue) > 0; queue = queue[1:] {
+		n := queue[0]
+		if n == to {
+			break
+		}
+		for _, i := range near[n] {
+			m := edges[i].a + edges[i].b - n
+			if _, seen := came[m]; !seen && int(i) != k {
+				came[m] = int(i)
+				queue = append(queue, m)
+			}
+		}
+	}
+	var path []int
+	for n := to; n != from; {
+		i, ok := came[n]
+		if !ok {
+			return nil
+		}
+		path = append(path, i)
+		n = edges[i].a + edges[i].b - n
+	}
+	slices.Reverse(path)
+	return path
+}
+
+// union is a forest of sets of nodes (Tarjan, Efficiency of a good but not linear set union algorithm, J. ACM 22, 1975; paths are halved).
 type union []int32
 
 func newUnion(n int) union {
@@ -48,166 +192,9 @@ func (u union) find(i int) int {
 	return i
 }
 
-// join unites two sets and reports whether they were apart.
+// join unites two sets and reports whether they were apart. The smaller number stands for both, so that gnd stands for its own.
 func (u union) join(a, b int) bool {
 	a, b = u.find(a), u.find(b)
-	u[b] = int32(a)
+	u[max(a, b)] = int32(min(a, b))
 	return a != b
-}
-
-// edge is something that fixes the voltage between two nodes.
-type edge struct {
-	a, b int
-	name string
-	at   syntax.Span
-}
-
-// stiff lists what fixes voltages: rails, driven inputs, voltage sources, inductors.
-func stiff(c *Circuit) []edge {
-	var list []edge
-	for _, r := range c.Rails {
-		list = append(list, edge{r.Node, 0, "the rail " + r.Name, r.Span})
-	}
-	for _, in := range c.Inputs {
-		if in.Open || in.Current {
-			continue
-		}
-		for _, n := range in.Nodes {
-			list = append(list, edge{n, 0, "the input " + in.Name, in.Span})
-		}
-	}
-	for _, x := range c.Elements {
-		if x.Kind == KindVoltageSource || x.Kind == KindInductor {
-			list = append(list, edge{x.Nodes[0], x.Nodes[1], x.Name, x.Span})
-		}
-	}
-	return list
-}
-
-// loops reports each source or inductor that closes a loop with others, and the shortest such loop.
-func (e *elaborator) loops(c *Circuit) {
-	u := newUnion(len(c.Nodes))
-	var tree []edge
-	for _, x := range stiff(c) {
-		if u.join(x.a, x.b) {
-			tree = append(tree, x)
-			continue
-		}
-		names := []string{x.name}
-		for _, y := range shortest(tree, x.a, x.b) {
-			names = append(names, y.name)
-		}
-		if len(names) == 1 {
-			e.fail(CodeLoop, x.at, fmt.Sprintf("both ends of %s are at the node %s", x.name, c.Nodes[x.a]))
-			continue
-		}
-		e.fail(CodeLoop, x.at, fmt.Sprintf("%s form a loop of voltage sources and inductors: nothing limits the current in it", strings.Join(names, ", ")))
-	}
-}
-
-// shortest finds the fewest edges from a to b, breadth first.
-func shortest(edges []edge, a, b int) []edge {
-	if a == b {
-		return nil
-	}
-	next := map[int][]int{}
-	for i, x := range edges {
-		next[x.a] = append(next[x.a], i)
-		next[x.b] = append(next[x.b], i)
-	}
-	came := map[int]int{a: -1}
-	queue := []int{a}
-	for len(queue) > 0 {
-		n := queue[0]
-		queue = queue[1:]
-		for _, i := range next[n] {
-			m := edges[i].a + edges[i].b - n
-			if _, seen := came[m]; seen {
-				continue
-			}
-			came[m] = i
-			queue = append(queue, m)
-		}
-	}
-	var path []edge
-	for n := b; n != a; {
-		i, ok := came[n]
-		if !ok || i < 0 {
-			break
-		}
-		path = append(path, edges[i])
-		n = edges[i].a + edges[i].b - n
-	}
-	slices.Reverse(path)
-	return path
-}
-
-// floating reports groups of nodes that no direct current can leave: only capacitors, or capacitors and current sources, join them to the rest.
-func (e *elaborator) floating(c *Circuit) {
-	u := newUnion(len(c.Nodes))
-	for _, x := range stiff(c) {
-		u.join(x.a, x.b)
-	}
-	for _, x := range c.Elements {
-		if x.Kind == KindCapacitor || x.Kind == KindCurrentSource {
-			continue
-		}
-		for i, n := range x.Nodes {
-			// A substrate is a capacitance only.
-			if x.Pins[i] != "s" || x.Path {
-				u.join(x.Nodes[0], n)
-			}
-		}
-	}
-	reported := map[int]bool{u.find(0): true}
-	for n := 1; n < len(c.Nodes); n++ {
-		group := u.find(n)
-		if reported[group] || e.degree[n] < 2 {
-			continue
-		}
-		reported[group] = true
-		e.reportFloating(c, u, group, n)
-	}
-}
-
-// reportFloating names the parts that cut a group off.
-func (e *elaborator) reportFloating(c *Circuit, u union, group, n int) {
-	var capacitors, sources []string
-	for _, x := range c.Elements {
-		if x.Kind != KindCapacitor && x.Kind != KindCurrentSource {
-			continue
-		}
-		if (u.find(x.Nodes[0]) == group) == (u.find(x.Nodes[1]) == group) {
-			continue
-		}
-		if x.Kind == KindCapacitor {
-			capacitors = append(capacitors, x.Name)
-		} else {
-			sources = append(sources, x.Name)
-		}
-	}
-	for _, in := range c.Inputs {
-		if in.Current && !in.Open && slices.ContainsFunc(in.Nodes, func(m int) bool { return u.find(m) == group }) {
-			sources = append(sources, "the input "+in.Name)
-		}
-	}
-	name := c.Nodes[n]
-	if len(sources) == 0 {
-		d := e.diagnostic(CodeFloating, e.mention[n], fmt.Sprintf("the node %s has no path for direct current to gnd", name))
-		if len(capacitors) > 0 {
-			d.Hint = "only capacitors join it to the rest: " + someOf(capacitors)
-		}
-		e.add(d)
-		return
-	}
-	e.fail(CodeCut, e.mention[n], fmt.Sprintf("only current sources and capacitors join the node %s to the rest (%s): nothing fixes its voltage", name, someOf(append(sources, capacitors...))))
-}
-
-// someOf lists at most a few names.
-func someOf(names []string) string {
-	const most = 6
-	if len(names) > most {
-		return strings.Join(names[:most], ", ") + fmt.Sprintf(" and %d more", len(names)-most)
-	}
-	return strings.Join(names, ", ")
 }
