@@ -3,6 +3,7 @@ package analyses
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"poise/mna"
 	"poise/netlist"
@@ -11,17 +12,20 @@ import (
 // recording holds what the expressions of a bench read off its run: the samples of every elementary
 // quantity over the window, nothing else.
 type recording struct {
-	from    float64 // s, start of the window
-	knots   []float64
-	columns map[string]*column
-	words   map[string]*wordColumn
-	samples stepSamples
+	from     float64 // s, start of the window
+	accuracy float64 // relative to the swing of a column
+	knots    []float64
+	columns  map[string]*column
+	list     []*column // those of columns, in the order in which they were asked for
+	words    map[string]*wordColumn
+	samples  stepSamples
 }
 
-// column is one elementary quantity: four samples for every step.
+// column is one elementary quantity: four samples for every piece.
 type column struct {
-	tap    tap
-	values []float64
+	tap       tap
+	values    []float64
+	low, high float64 // extremes so far
 }
 
 // wordColumn keeps the words that a quantity takes and when it first takes each.
@@ -32,8 +36,8 @@ type wordColumn struct {
 }
 
 // newRecording prepares to record the elementary quantities that qs consist of.
-func (m *model) newRecording(from float64, qs []netlist.Quantity) (*recording, error) {
-	r := &recording{from: from, columns: map[string]*column{}, words: map[string]*wordColumn{}}
+func (m *model) newRecording(from, accuracy float64, qs []netlist.Quantity) (*recording, error) {
+	r := &recording{from: from, accuracy: accuracy, columns: map[string]*column{}, words: map[string]*wordColumn{}}
 	for k := range r.samples.x {
 		r.samples.x[k] = make([]float64, m.system.Size())
 	}
@@ -76,7 +80,9 @@ func (r *recording) wantColumn(m *model, q netlist.Quantity) error {
 	if err != nil {
 		return err
 	}
-	r.columns[key] = &column{tap: t}
+	c := &column{tap: t, low: math.Inf(1), high: math.Inf(-1)}
+	r.columns[key] = c
+	r.list = append(r.list, c)
 	return nil
 }
 
@@ -128,38 +134,113 @@ func (r *recording) word(q *netlist.Operating, want string) (string, float64, er
 	return want, r.knots[0], nil
 }
 
+const (
+	// pieceShare is the share of the accuracy that the cubic of a piece may be off a quantity that is no cubic itself: a stimulus, a
+	// junction's current.
+	pieceShare = 0.1
+	// valueShare is the share of a quantity's size below which its swing is not looked at: rounding.
+	valueShare = 1e-6
+	// pieceHalvings bounds how often a step is halved; at a kink no number of halvings is enough.
+	pieceHalvings = 6
+)
+
 // add records one accepted step, or the part of it that lies in the window.
 func (r *recording) add(step *mna.Step) error {
 	start := max(step.T0, r.from)
 	if start >= step.T1 {
 		return nil
 	}
-	s := &r.samples
-	s.h = step.T1 - start
-	for k := range s.x {
-		s.t[k] = start + s.h*float64(k)/(samplesPerStep-1)
-		if k == samplesPerStep-1 {
-			s.t[k] = step.T1
-		}
-		step.At(s.t[k], s.x[k])
-	}
 	if len(r.knots) == 0 {
 		r.knots = append(r.knots, start)
 	}
-	r.knots = append(r.knots, step.T1)
-	for _, c := range r.columns {
-		var out [samplesPerStep]float64
-		if err := c.tap.sample(s, out[:]); err != nil {
-			return err
-		}
-		c.values = append(c.values, out[:]...)
+	values, err := r.sample(step, start, step.T1)
+	if err != nil {
+		return err
 	}
 	for _, c := range r.words {
-		if err := c.add(s); err != nil {
+		if err := c.add(&r.samples); err != nil {
 			return err
 		}
 	}
-	return nil
+	halvings := pieceHalvings
+	if !slices.ContainsFunc(r.list, func(c *column) bool { return !c.tap.cubic() }) {
+		halvings = 0
+	}
+	return r.record(step, start, step.T1, values, halvings)
+}
+
+// sample reads all columns at four points of a piece of the step.
+func (r *recording) sample(step *mna.Step, from, until float64) ([][samplesPerStep]float64, error) {
+	s := &r.samples
+	s.h = until - from
+	for k := range s.x {
+		s.t[k] = from + s.h*float64(k)/(samplesPerStep-1)
+		if k == samplesPerStep-1 {
+			s.t[k] = until
+		}
+		step.At(s.t[k], s.x[k])
+	}
+	values := make([][samplesPerStep]float64, len(r.list))
+	for i, c := range r.list {
+		if err := c.tap.sample(s, values[i][:]); err != nil {
+			return nil, err
+		}
+		for _, v := range values[i] {
+			c.low, c.high = math.Min(c.low, v), math.Max(c.high, v)
+		}
+	}
+	return values, nil
+}
+
+// record keeps the samples of a piece if their cubics are good enough, else those of its halves.
+func (r *recording) record(step *mna.Step, from, until float64, values [][samplesPerStep]float64, halvings int) error {
+	middle := from + (until-from)/2
+	if halvings == 0 || !(middle > from && middle < until) {
+		r.keep(until, values)
+		return nil
+	}
+	left, err := r.sample(step, from, middle)
+	if err != nil {
+		return err
+	}
+	right, err := r.sample(step, middle, until)
+	if err != nil {
+		return err
+	}
+	if r.good(values, left, right) {
+		r.keep(until, values)
+		return nil
+	}
+	if err := r.record(step, from, middle, left, halvings-1); err != nil {
+		return err
+	}
+	return r.record(step, middle, until, right, halvings-1)
+}
+
+// good reports whether the cubics of a piece agree with the samples of its halves.
+func (r *recording) good(values, left, right [][samplesPerStep]float64) bool {
+	for i, c := range r.list {
+		if c.tap.cubic() {
+			continue
+		}
+		allowed := pieceShare * r.accuracy * math.Max(c.high-c.low, valueShare*math.Max(math.Abs(c.low), math.Abs(c.high)))
+		whole := newCubic(values[i][:])
+		for k := range samplesPerStep {
+			u := float64(k) / (2 * (samplesPerStep - 1))
+			if !(math.Abs(whole.at(u)-left[i][k]) <= allowed && math.Abs(whole.at(u+0.5)-right[i][k]) <= allowed) {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// keep adds a piece that ends at a time.
+func (r *recording) keep(until float64, values [][samplesPerStep]float64) {
+	r.knots = append(r.knots, until)
+	for i, c := range r.list {
+		c.values = append(c.values, values[i][:]...)
+	}
 }
 
 func (c *wordColumn) add(s *stepSamples) error {
@@ -179,7 +260,7 @@ func (c *wordColumn) add(s *stepSamples) error {
 // run integrates the set-up's transient and records what qs need.
 func (e *evaluation) run(qs []netlist.Quantity) error {
 	run := e.setup.Run
-	r, err := e.model.newRecording(run.From, qs)
+	r, err := e.model.newRecording(run.From, e.setup.Circuit.Accuracy, qs)
 	if err != nil {
 		return err
 	}

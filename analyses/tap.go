@@ -15,6 +15,8 @@ type tap interface {
 	rest(x []float64) (float64, error)
 	// sample fills out with the quantity at the four samples of a step of length h.
 	sample(s *stepSamples, out []float64) error
+	// cubic reports whether the quantity is a cubic within a step, as the integrator's own unknowns are.
+	cubic() bool
 }
 
 // stepSamples holds the solution at the four samples of one step.
@@ -49,7 +51,10 @@ func (m *model) tapOf(q netlist.Quantity) (tap, error) {
 }
 
 // voltsTap reads a voltage.
-type voltsTap struct{ plus, minus mna.Unknown }
+type voltsTap struct {
+	plus, minus mna.Unknown
+	free        bool // neither node is held by a signal
+}
 
 func (m *model) voltsTap(plus, minus string) (tap, error) {
 	p, err := m.unknown(plus)
@@ -60,10 +65,13 @@ func (m *model) voltsTap(plus, minus string) (tap, error) {
 	if err != nil {
 		return nil, err
 	}
-	return voltsTap{p, n}, nil
+	free := func(u mna.Unknown) bool { return u == mna.Ground || int(u) > m.system.Held() }
+	return voltsTap{p, n, free(p) && free(n)}, nil
 }
 
 func (v voltsTap) rest(x []float64) (float64, error) { return x[v.plus] - x[v.minus], nil }
+
+func (v voltsTap) cubic() bool { return v.free }
 
 func (v voltsTap) sample(s *stepSamples, out []float64) error {
 	for k := range out {
@@ -132,6 +140,8 @@ func (c *currentTap) rest(x []float64) (float64, error) {
 	return c.sign * sum, nil
 }
 
+func (c *currentTap) cubic() bool { return false }
+
 func (c *currentTap) sample(s *stepSamples, out []float64) error {
 	clear(out)
 	for i, p := range c.probes {
@@ -173,6 +183,8 @@ func (m *model) wattsTap(element string) (tap, error) {
 	}
 	return w, nil
 }
+
+func (w *wattsTap) cubic() bool { return false }
 
 func (w *wattsTap) rest(x []float64) (float64, error) {
 	sum := 0.0
@@ -223,6 +235,8 @@ func (o *operatingTap) read(x []float64, t float64) (mna.Quantity, error) {
 	}
 	return mna.Quantity{}, &InputError{Message: "there is no operating quantity " + o.full}
 }
+
+func (o *operatingTap) cubic() bool { return false }
 
 func (o *operatingTap) rest(x []float64) (float64, error) {
 	q, err := o.read(x, 0)

@@ -253,7 +253,8 @@ func phaseTime(phase, period float64) float64 {
 	return (turns - math.Floor(turns)) * period
 }
 
-// Square is high from phase 0 for the share Duty of a period, measured at the middle of its edges.
+// Square is at the start of its high part at phase 0; it is above its middle for the share Duty of a period: the high part ends, and the
+// falling edge begins, an edge's length before that share is over, and the rising edge ends with the period.
 type Square struct {
 	Peak      float64 // V or A: it goes from -Peak to Peak
 	Frequency float64 // Hz
@@ -262,7 +263,7 @@ type Square struct {
 	Edge      float64 // s, 10-90 %; 0: DefaultEdge
 }
 
-// New checks the numbers and returns the signal. It is high from time 0 on at phase 0; the edges end and begin there.
+// New checks the numbers and returns the signal.
 func (w Square) New() (mna.Signal, error) {
 	if err := positive("frequency", w.Frequency, "Hz"); err != nil {
 		return nil, err
@@ -279,10 +280,7 @@ func (w Square) New() (mna.Signal, error) {
 	if !(edge < high && edge < period-high) {
 		return nil, &SignalError{"edge", "shorter than the high and the low part"}
 	}
-	times := []float64{0, high, high + edge, period - edge, period}
+	times := []float64{0, high - edge, high, period - edge, period}
 	values := []float64{w.Peak, w.Peak, -w.Peak, -w.Peak, w.Peak}
-	if period-edge <= high+edge {
-		times, values = []float64{0, high, high + edge, period}, []float64{w.Peak, w.Peak, -w.Peak, w.Peak}
-	}
 	return newLinear(times, values, period, 0, phaseTime(w.Phase, period))
 }
