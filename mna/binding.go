@@ -4,7 +4,7 @@ import "poise/mna/sparse"
 
 // bind connects the devices.
 func (s *System) bind() error {
-	b := &binding{system: s, slot: make(map[place]Slot, 8*len(s.devices)), rows: []int32{-1}, cols: []int32{-1}}
+	b := &binding{system: s, entries: newEntries(-1, len(s.devices))}
 	s.diagonal = append(s.diagonal, 0)
 	for u := 1; u < len(s.names); u++ {
 		s.diagonal = append(s.diagonal, b.Slot(Unknown(u), Unknown(u)))
@@ -57,13 +57,11 @@ type place struct{ row, col Unknown }
 
 // binding is the Binder of a whole system.
 type binding struct {
-	system     *System
-	device     placed
-	internals  []Unknown
-	slot       map[place]Slot
-	rows, cols []int32
-	junctions  int
-	missing    error
+	system    *System
+	device    placed
+	internals []Unknown
+	entries
+	missing error
 }
 
 func (b *binding) Pin(i int) Unknown {
@@ -91,24 +89,41 @@ func (b *binding) add(name string, branch bool) Unknown {
 	return u
 }
 
-func (b *binding) Slot(row, col Unknown) Slot {
+// entries gives Jacobian entries and junctions their places.
+type entries struct {
+	slot       map[place]Slot
+	rows, cols []int32 // of each slot
+	junctions  int
+}
+
+// entriesPerDevice is about how many entries a device has.
+const entriesPerDevice = 8
+
+// newEntries returns entries for a number of devices, with the dump in slot 0, whose row and column are as given.
+func newEntries(dump int32, devices int) entries {
+	return entries{slot: make(map[place]Slot, entriesPerDevice*devices), rows: []int32{dump}, cols: []int32{dump}}
+}
+
+// Slot returns the place of an entry, the dump's in the row or the column of ground.
+func (n *entries) Slot(row, col Unknown) Slot {
 	if row == Ground || col == Ground {
 		return 0
 	}
 	key := place{row, col}
-	if s, ok := b.slot[key]; ok {
+	if s, ok := n.slot[key]; ok {
 		return s
 	}
-	s := Slot(len(b.rows))
-	b.slot[key] = s
-	b.rows = append(b.rows, int32(row))
-	b.cols = append(b.cols, int32(col))
+	s := Slot(len(n.rows))
+	n.slot[key] = s
+	n.rows = append(n.rows, int32(row))
+	n.cols = append(n.cols, int32(col))
 	return s
 }
 
-func (b *binding) Junction() int {
-	b.junctions++
-	return b.junctions - 1
+// Junction reserves the next junction.
+func (n *entries) Junction() int {
+	n.junctions++
+	return n.junctions - 1
 }
 
 // analyse orders the equations of the free unknowns.

@@ -16,7 +16,7 @@ func (s *System) Probe(device int) *Probe {
 	d := s.devices[device]
 	pins, internals := s.Unknowns(device)
 	p := &Probe{from: append(pins, internals...), pins: len(pins)}
-	b := &probeBinding{pins: len(pins), next: Unknown(len(pins) + 1), slot: map[[2]Unknown]Slot{}, rows: []int32{0}, cols: []int32{0}}
+	b := &probeBinding{pins: len(pins), next: Unknown(len(pins) + 1), entries: newEntries(0, 1)}
 	p.stamp = d.device.Bind(b)
 	n := len(p.from) + 1
 	p.rows, p.cols = b.rows, b.cols
@@ -30,11 +30,9 @@ func (s *System) Probe(device int) *Probe {
 
 // probeBinding is the Binder of a probe: every pin has an unknown of its own.
 type probeBinding struct {
-	pins       int
-	next       Unknown
-	slot       map[[2]Unknown]Slot
-	rows, cols []int32
-	junctions  int
+	pins int
+	next Unknown
+	entries
 }
 
 func (b *probeBinding) Pin(i int) Unknown { return Unknown(i + 1) }
@@ -45,23 +43,6 @@ func (b *probeBinding) Internal(string) Unknown {
 }
 
 func (b *probeBinding) Branch(name string) Unknown { return b.Internal(name) }
-
-func (b *probeBinding) Slot(row, col Unknown) Slot {
-	key := [2]Unknown{row, col}
-	if s, ok := b.slot[key]; ok {
-		return s
-	}
-	s := Slot(len(b.rows))
-	b.slot[key] = s
-	b.rows = append(b.rows, int32(row))
-	b.cols = append(b.cols, int32(col))
-	return s
-}
-
-func (b *probeBinding) Junction() int {
-	b.junctions++
-	return b.junctions - 1
-}
 
 // Load evaluates the device at a solution x of the system and time t in s.
 func (p *Probe) Load(x []float64, t float64) {
