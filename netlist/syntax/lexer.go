@@ -232,7 +232,9 @@ func stringLength(text string) (lexer.TokenType, int) {
 	for i := 1; i < len(text); i++ {
 		switch text[i] {
 		case '\\':
-			i++
+			if i+1 < len(text) && text[i+1] != '\n' {
+				i++
+			}
 		case '"':
 			return kindString, i + 1
 		case '\n':
