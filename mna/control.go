@@ -6,6 +6,7 @@ import "math"
 // equations, BIT 28, 1988, 270-287, with its recommended gains 0.7/k and 0.4/k for an error that goes with the k-th power of the step.
 const (
 	safety       = 0.9
+	aim          = 0.35 // ratio of estimated to allowed error that steps are chosen for
 	integralGain = 0.7
 	pastGain     = 0.4
 	shrinkMost   = 0.2
@@ -21,10 +22,10 @@ type control struct {
 	rejected bool    // since the last accepted step
 }
 
-func newControl(power float64) control { return control{power: power, last: 1} }
+func newControl(power float64) control { return control{power: power, last: aim} }
 
 // restart forgets the past.
-func (c *control) restart() { c.last, c.rejected = 1, false }
+func (c *control) restart() { c.last, c.rejected = aim, false }
 
 // factor returns by what the step should be multiplied after one with this ratio of estimated to allowed error.
 func (c *control) factor(ratio float64) float64 {
@@ -36,7 +37,7 @@ func (c *control) factor(ratio float64) float64 {
 		}
 		return math.Max(shrinkMost, safety*math.Pow(ratio, -1/c.power))
 	}
-	f := safety * math.Pow(c.ratio, -integralGain/c.power) * math.Pow(c.last, pastGain/c.power)
+	f := math.Pow(c.ratio/aim, -integralGain/c.power) * math.Pow(c.last/aim, pastGain/c.power)
 	if c.rejected {
 		f = math.Min(f, 1)
 	}

@@ -183,7 +183,9 @@ func denseEquations(s *System) (*mat.Dense, *mat.VecDense, int) {
 
 // TestRandomTransients runs random nonlinear networks under a sine and a pulse, from rest and cold, and compares the default
 // accuracy with a run ten times as accurate.
-func TestRandomTransients(t *testing.T) {
+func TestRandomTransients(t *testing.T) { eachMethod(t, randomTransientsAgree) }
+
+func randomTransientsAgree(t *testing.T, method Method) {
 	const networks, until, looked = 60, 2e-3, 97
 	// A run returns samples and the swing of every unknown over all of its steps.
 	run := func(s *System, o TransientOptions) (samples [][]float64, swing []float64, stats *TransientStats, err error) {
@@ -222,13 +224,13 @@ func TestRandomTransients(t *testing.T) {
 			continue
 		}
 		cold := seed%2 == 1
-		coarse, _, stats, err := run(s, TransientOptions{Cold: cold})
+		coarse, _, stats, err := run(s, TransientOptions{Method: method, Cold: cold})
 		if singular := (*SingularError)(nil); errors.As(err, &singular) {
 			continue
 		}
 		require.NoError(t, err, "seed %d", seed)
 		evaluations += stats.Work.Evaluations
-		fine, swing, _, err := run(s, TransientOptions{Cold: cold, Accuracy: defaultAccuracy / 10})
+		fine, swing, _, err := run(s, TransientOptions{Method: method, Cold: cold, Accuracy: defaultAccuracy / 10})
 		require.NoError(t, err, "seed %d", seed)
 		for u := s.first(); u < s.Size(); u++ {
 			// Unknowns that hardly move are measured by their size, and by what the signals swing by: 5 V, and 1 nA beside it.

@@ -2,6 +2,7 @@ package mna
 
 import (
 	"context"
+	"fmt"
 	"math"
 	"testing"
 
@@ -11,27 +12,69 @@ import (
 // slopeTolerance is how far a measured order may be from that of the method: the next term of the error is still seen.
 const slopeTolerance = 0.15
 
-// march integrates in equal steps, without error control, and returns the largest error of an unknown at the ends of the steps and within them.
-func march(t testing.TB, n *net, node string, start []float64, until float64, steps int, exact func(t float64) float64) (ends, within float64) {
+// marched is a method in equal steps: TR-BDF2, or a numerical differentiation formula of one order with an exact past.
+type marched struct {
+	name  string
+	order int // of an NDF, 0 for TR-BDF2
+}
+
+func marches() []marched {
+	list := []marched{{"TR-BDF2", 0}}
+	for order := 1; order <= ndfMost; order++ {
+		list = append(list, marched{fmt.Sprint("NDF ", order), order})
+	}
+	return list
+}
+
+// begin starts at time 0, where exact is the solution of all unknowns.
+func (c marched) begin(t testing.TB, s *System, o TransientOptions, h float64, exact func(t float64, x []float64)) *integration {
 	t.Helper()
-	s := n.build()
-	r := newIntegration(context.Background(), s, TransientOptions{Until: until, Start: start, Accuracy: 1e-9})
+	if c.order == 0 {
+		o.Method = TRBDF2
+	}
+	r := newIntegration(context.Background(), s, o)
 	require.NoError(t, r.begin())
-	u, x := n.u(node), make([]float64, s.Size())
-	begun := r.t
+	m, ok := r.method.(*ndf)
+	if !ok {
+		return r
+	}
+	r.t = 0
+	m.forget()
+	for k := -c.order; k <= 0; k++ {
+		p := s.newPoint()
+		p.t = float64(k) * h
+		exact(p.t, p.x)
+		copy(r.w.eval.X, p.x)
+		r.w.evaluate(&problem{time: p.t, drive: 1, alpha: 1})
+		copy(p.q, r.w.eval.Q)
+		m.append(&p)
+	}
+	m.setOrder(c.order)
+	return r
+}
+
+// march takes equal steps, without error control, and returns the largest error of an unknown at the ends of the steps and within them.
+func (c marched) march(t testing.TB, s *System, o TransientOptions, u Unknown, steps int, exact func(t float64, x []float64)) (ends, within float64) {
+	t.Helper()
+	h := o.Until / float64(steps)
+	r := c.begin(t, s, o, h, exact)
+	x, want, begun := make([]float64, s.Size()), make([]float64, s.Size()), r.t
+	miss := func(at float64) float64 {
+		r.method.interpolate(at, x)
+		exact(at, want)
+		return math.Abs(x[u] - want[u])
+	}
 	for k := 1; k <= steps; k++ {
-		from := r.t
-		to := begun + (until-begun)*float64(k)/float64(steps)
+		from, to := r.t, begun+(o.Until-begun)*float64(k)/float64(steps)
 		require.NoError(t, r.method.attempt(to))
 		r.method.accept()
 		r.t = to
-		if ends = math.Max(ends, math.Abs(r.method.end().x[u]-exact(to))); k == 1 {
-			continue // the first step has a parabola only
+		exact(to, want)
+		if ends = math.Max(ends, math.Abs(r.method.end().x[u]-want[u])); k == 1 {
+			continue // the first step of TR-BDF2 has a parabola only
 		}
 		for _, share := range []float64{0.17, 0.44, 0.81} {
-			at := from + share*(to-from)
-			r.method.interpolate(at, x)
-			within = math.Max(within, math.Abs(x[u]-exact(at)))
+			within = math.Max(within, miss(from+share*(to-from)))
 		}
 	}
 	return ends, within
@@ -48,16 +91,30 @@ func logistic() Device {
 }
 
 func TestOrderOnNonlinearCharges(t *testing.T) {
-	exact := func(t float64) float64 { return 0.2 / (0.2 + 0.8*math.Exp(-t)) }
-	var ends, within []float64
-	for _, steps := range []int{20, 40, 80, 160} {
-		n := newNet(t)
-		n.add("law", logistic(), "x")
-		e, w := march(t, n, "x", []float64{0, 0.2}, 5, steps, exact)
-		ends, within = append(ends, e), append(within, w)
+	for _, c := range marches() {
+		t.Run(c.name, func(t *testing.T) {
+			n := newNet(t)
+			n.add("law", logistic(), "x")
+			s := n.build()
+			var ends, within []float64
+			for _, steps := range []int{50, 100, 200} {
+				e, w := c.march(t, s, TransientOptions{Until: 5, Start: []float64{0, 0.2}, Accuracy: 1e-9}, n.u("x"), steps, func(t float64, x []float64) {
+					x[1] = 0.2 / (0.2 + 0.8*math.Exp(-t))
+				})
+				ends, within = append(ends, e), append(within, w)
+			}
+			checkOrder(t, "ends", ends, c.converges())
+			checkOrder(t, "within", within, c.converges())
+		})
 	}
-	checkOrder(t, "ends", ends, 2)
-	checkOrder(t, "within", within, 2)
+}
+
+// converges is the order of the method.
+func (c marched) converges() float64 {
+	if c.order == 0 {
+		return trbdf2Order
+	}
+	return float64(c.order)
 }
 
 // checkOrder checks the slopes of errors that belong to steps halved each time.
@@ -72,53 +129,66 @@ func checkOrder(t testing.TB, what string, errors []float64, order float64) {
 
 // TestOrderOfSlopes checks a current that is the derivative of a charge (index 2).
 func TestOrderOfSlopes(t *testing.T) {
-	var ends []float64
-	for _, steps := range []int{50, 100, 200, 400} {
-		n := newNet(t)
-		n.add("V", voltage{sine{1, 1}}, "a", "gnd")
-		n.add("C", capacitor{1, 0}, "a", "gnd")
-		s := n.build()
-		_, inside := s.Unknowns(0)
-		r := newIntegration(context.Background(), s, TransientOptions{Until: 1})
-		require.NoError(t, r.begin())
-		begun, largest := r.t, 0.0
-		for k := 1; k <= steps; k++ {
-			to := begun + (1-begun)*float64(k)/float64(steps)
-			require.NoError(t, r.method.attempt(to))
-			r.method.accept()
-			r.t = to
-			largest = math.Max(largest, math.Abs(r.method.end().x[inside[0]]+2*math.Pi*math.Cos(2*math.Pi*to)))
-		}
-		ends = append(ends, largest)
+	for _, c := range marches() {
+		t.Run(c.name, func(t *testing.T) {
+			n := newNet(t)
+			n.add("V", voltage{sine{1, 1}}, "a", "gnd")
+			n.add("C", capacitor{1, 0}, "a", "gnd")
+			s := n.build()
+			_, inside := s.Unknowns(0)
+			a, i := n.u("a"), inside[0]
+			var ends []float64
+			for _, steps := range []int{50, 100, 200} {
+				e, _ := c.march(t, s, TransientOptions{Until: 1}, i, steps, func(t float64, x []float64) {
+					x[a], x[i] = math.Sin(2*math.Pi*t), -2*math.Pi*math.Cos(2*math.Pi*t)
+				})
+				ends = append(ends, e)
+			}
+			checkOrder(t, "slope", ends, c.converges())
+		})
 	}
-	checkOrder(t, "slope", ends, 2)
 }
 
-// TestDenseOrder isolates the interpolation: without charges the points are exact, and the cubic has a fourth-order error.
+// TestDenseOrder isolates the interpolation: without charges the points are exact, and a polynomial of degree k has an error of order k+1.
 func TestDenseOrder(t *testing.T) {
-	var within []float64
-	for _, steps := range []int{40, 80, 160} {
-		n := newNet(t)
-		n.hold("in", sine{1, 1})
-		n.add("R1", resistor(1), "in", "a")
-		n.add("R2", resistor(1), "a", "gnd")
-		ends, w := march(t, n, "a", nil, 1, steps, func(t float64) float64 { return math.Sin(2*math.Pi*t) / 2 })
-		near(t, 0, ends, 1e-12)
-		within = append(within, w)
+	for _, c := range marches() {
+		t.Run(c.name, func(t *testing.T) {
+			n := newNet(t)
+			n.hold("in", sine{1, 1})
+			n.add("R1", resistor(1), "in", "a")
+			n.add("R2", resistor(1), "a", "gnd")
+			s := n.build()
+			in, a := n.u("in"), n.u("a")
+			var within []float64
+			for _, steps := range []int{40, 80, 160} {
+				e, w := c.march(t, s, TransientOptions{Until: 1}, a, steps, func(t float64, x []float64) {
+					x[in] = math.Sin(2 * math.Pi * t)
+					x[a] = x[in] / 2
+				})
+				near(t, 0, e, 1e-12)
+				within = append(within, w)
+			}
+			degree := c.order
+			if c.order == 0 {
+				degree = 3
+			}
+			checkOrder(t, "within", within, float64(degree+1))
+		})
 	}
-	checkOrder(t, "cubic", within, 4)
 }
 
 // TestProtheroRobinson follows y' = -lambda (y - sin t) + cos t (Prothero & Robinson, On the stability and accuracy of one-step methods for solving stiff
 // systems, Math. Comp. 28, 1974): the error must not grow with the stiffness.
-func TestProtheroRobinson(t *testing.T) {
+func TestProtheroRobinson(t *testing.T) { eachMethod(t, stiffnessCostsNoAccuracy) }
+
+func stiffnessCostsNoAccuracy(t *testing.T, method Method) {
 	for _, lambda := range []float64{1, 1e2, 1e4, 1e6, 1e8} {
 		n := newNet(t)
 		n.add("law", law{pins: 1, f: func(t float64, y, f []float64, df [][]float64) {
 			f[0], df[0][0] = lambda*(y[0]-math.Sin(t))-math.Cos(t), lambda
 		}}, "y")
 		s := n.build()
-		d, stats := worst(t, s, TransientOptions{Until: 10, Start: []float64{0, 0}}, n.u("y"), math.Sin)
+		d, stats := worst(t, s, TransientOptions{Method: method, Until: 10, Start: []float64{0, 0}}, n.u("y"), math.Sin)
 		t.Logf("lambda %g: error %.2e of the swing, %d steps, %d evaluations", lambda, d/2, stats.Steps, stats.Work.Evaluations)
 		near(t, 0, d/2, defaultAccuracy, lambda)
 		require.Less(t, stats.Work.Evaluations, 1500)
@@ -126,14 +196,16 @@ func TestProtheroRobinson(t *testing.T) {
 }
 
 // TestStiffDecay: components that have died out must not ring (L-stability).
-func TestStiffDecay(t *testing.T) {
+func TestStiffDecay(t *testing.T) { eachMethod(t, decaysDoNotRing) }
+
+func decaysDoNotRing(t *testing.T, method Method) {
 	n := newNet(t)
 	n.add("R", resistor(1), "a", "gnd")
 	n.add("C", capacitor{1e-9, 1}, "a", "gnd")
 	s := n.build()
 	u := n.u("a")
 	x := make([]float64, s.Size())
-	stats := transient(t, s, TransientOptions{Until: 1, Cold: true}, func(p *Step) {
+	stats := transient(t, s, TransientOptions{Method: method, Until: 1, Cold: true}, func(p *Step) {
 		p.At(p.T1, x)
 		near(t, math.Exp(-p.T1/1e-9), x[u], 1e-4, p.T1)
 	})

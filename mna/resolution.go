@@ -6,10 +6,10 @@ const (
 	// The allowed error of one step is localShare of the accuracy a user asks for, at an accuracy of 1e-3 or worse: errors of many steps add
 	// up. From there it falls faster than the accuracy. A local error e costs e^(1/(k+1)) fewer steps with a method of order
 	// k, so that the sum goes with e^(k/(k+1)); for the sum to go with the accuracy, e must go with its power (k+1)/k.
-	localShare    = 0.05
+	localShare    = 0.03
 	localAccuracy = 1e-3
 	// denseShare is the share for the interpolation within a step, whose errors do not add up.
-	denseShare = 0.3
+	denseShare = 0.15
 
 	// An unknown that hardly moves is not resolved below these shares: of its size, of the largest size of its kind, and of the
 	// largest swing of a stimulus (a signal 100 dB below the stimulus still counts with its own swing at the default accuracy).

@@ -15,7 +15,26 @@ type TransientOptions struct {
 	Accuracy float64      // relative error of a waveform that is wanted, above 0 and below 1; 0: 1e-4
 	Start    []float64    // all unknowns at time 0, a bias point; nil: found first
 	Cold     bool         // start from the devices' own start values instead, uncharged without
+	Method   Method       // 0: NDF
 	Logger   *slog.Logger // nil: silent
+}
+
+// Method is an implicit integration method.
+type Method int
+
+const (
+	NDF    Method = iota // numerical differentiation formulas of orders 1 to 5
+	TRBDF2               // a trapezoidal step and a backward differentiation of second order
+)
+
+func (m Method) String() string {
+	switch m {
+	case NDF:
+		return "NDF"
+	case TRBDF2:
+		return "TR-BDF2"
+	}
+	return fmt.Sprintf("method %d", int(m))
 }
 
 // TransientStats count what an integration took.
@@ -102,6 +121,8 @@ func (o *TransientOptions) check(s *System) error {
 		return &OptionError{"MaxStep", "a time above 0, or 0 for none"}
 	case !(o.Accuracy >= 0 && o.Accuracy < 1):
 		return &OptionError{"Accuracy", "a number above 0 and below 1, or 0 for 1e-4"}
+	case o.Method != NDF && o.Method != TRBDF2:
+		return &OptionError{"Method", "one of the methods of the package"}
 	case o.Start != nil && len(o.Start) != len(s.names):
 		return &OptionError{"Start", "as many values as the system has unknowns"}
 	}
@@ -173,9 +194,16 @@ func newIntegration(ctx context.Context, s *System, o TransientOptions) *integra
 	if o.Logger == nil {
 		o.Logger = slog.New(slog.DiscardHandler)
 	}
-	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger, resolution: newResolution(s, o.Accuracy, trbdf2Order)}
+	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger}
 	r.step.r = r
-	r.method = newTRBDF2(r)
+	switch o.Method {
+	case TRBDF2:
+		r.resolution = newResolution(s, o.Accuracy, trbdf2Order)
+		r.method = newTRBDF2(r)
+	default:
+		r.resolution = newResolution(s, o.Accuracy, ndfMost)
+		r.method = newNDF(r)
+	}
 	return r
 }
 

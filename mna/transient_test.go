@@ -27,6 +27,13 @@ func transient(t testing.TB, s *System, o TransientOptions, look func(p *Step)) 
 	return stats
 }
 
+// eachMethod runs a test with every integration method.
+func eachMethod(t *testing.T, test func(t *testing.T, method Method)) {
+	for _, method := range []Method{NDF, TRBDF2} {
+		t.Run(method.String(), func(t *testing.T) { test(t, method) })
+	}
+}
+
 // looks is the number of places within a step at which a solution is compared.
 const looks = 7
 
@@ -129,7 +136,9 @@ var waveforms = []struct {
 }
 
 // TestWaveforms holds the promise of the accuracy setting: the error of a waveform within every step stays below it, and falls with it.
-func TestWaveforms(t *testing.T) {
+func TestWaveforms(t *testing.T) { eachMethod(t, waveformsKeepAccuracy) }
+
+func waveformsKeepAccuracy(t *testing.T, method Method) {
 	for _, c := range waveforms {
 		t.Run(c.name, func(t *testing.T) {
 			previous := math.Inf(1)
@@ -137,7 +146,7 @@ func TestWaveforms(t *testing.T) {
 				n := newNet(t)
 				u := c.make(n)
 				s := n.build()
-				d, stats := worst(t, s, TransientOptions{Until: c.until, Accuracy: accuracy, Cold: c.cold}, u(), c.exact)
+				d, stats := worst(t, s, TransientOptions{Method: method, Until: c.until, Accuracy: accuracy, Cold: c.cold}, u(), c.exact)
 				t.Logf("accuracy %g: error %.2e of the swing, %d steps, %d evaluations", accuracy, d/c.swing, stats.Steps, stats.Work.Evaluations)
 				near(t, 0, d/c.swing, accuracy, "accuracy", accuracy)
 				require.Less(t, d, previous)
@@ -237,7 +246,9 @@ func (c *stiffProblem) rate(end []float64) []float64 {
 
 // TestStiffProblems compares the end with the reference. The end of hires lies in a steep fall after a long delay, which the problem is known for: there a
 // waveform is as far from the reference as the smaller of its distances in value, beside the swing, and in time, beside the whole time.
-func TestStiffProblems(t *testing.T) {
+func TestStiffProblems(t *testing.T) { eachMethod(t, stiffProblemsEndRight) }
+
+func stiffProblemsEndRight(t *testing.T, method Method) {
 	for _, c := range stiff {
 		t.Run(c.name, func(t *testing.T) {
 			want := reference(t, c.name)
@@ -252,7 +263,7 @@ func TestStiffProblems(t *testing.T) {
 				s := n.build()
 				low, high := append([]float64{0}, c.start...), append([]float64{0}, c.start...)
 				var end []float64
-				stats := transient(t, s, TransientOptions{Until: c.until, Accuracy: accuracy, Start: append([]float64{0}, c.start...)}, func(p *Step) {
+				stats := transient(t, s, TransientOptions{Method: method, Until: c.until, Accuracy: accuracy, Start: append([]float64{0}, c.start...)}, func(p *Step) {
 					end = append(end[:0], p.End()...)
 					for i, v := range end {
 						low[i], high[i] = math.Min(low[i], v), math.Max(high[i], v)
@@ -307,7 +318,9 @@ func transistorAmplifier(t testing.TB) *net {
 	return n
 }
 
-func TestTransistorAmplifier(t *testing.T) {
+func TestTransistorAmplifier(t *testing.T) { eachMethod(t, amplifierEndsRight) }
+
+func amplifierEndsRight(t *testing.T, method Method) {
 	want := reference(t, "amplifier")
 	for _, accuracy := range []float64{1e-3, 1e-4, 1e-5} {
 		n := transistorAmplifier(t)
@@ -318,7 +331,7 @@ func TestTransistorAmplifier(t *testing.T) {
 		}
 		low, high := append([]float64(nil), start...), append([]float64(nil), start...)
 		var end []float64
-		stats := transient(t, s, TransientOptions{Until: 0.2, Accuracy: accuracy, Start: start}, func(p *Step) {
+		stats := transient(t, s, TransientOptions{Method: method, Until: 0.2, Accuracy: accuracy, Start: start}, func(p *Step) {
 			end = append(end[:0], p.End()...)
 			for i, v := range end {
 				low[i], high[i] = math.Min(low[i], v), math.Max(high[i], v)
@@ -334,7 +347,9 @@ func TestTransistorAmplifier(t *testing.T) {
 	}
 }
 
-func TestJumps(t *testing.T) {
+func TestJumps(t *testing.T) { eachMethod(t, jumpsAreSeen) }
+
+func jumpsAreSeen(t *testing.T, method Method) {
 	// Unknowns that no charge holds jump with the source, and each side of the jump sees its own value.
 	n := newNet(t)
 	n.add("V", voltage{jump{1, 4, 0.3}}, "in", "gnd")
@@ -346,7 +361,7 @@ func TestJumps(t *testing.T) {
 	a, c := n.u("a"), n.u("c")
 	landed := false
 	x := make([]float64, s.Size())
-	transient(t, s, TransientOptions{Until: 1}, func(p *Step) {
+	transient(t, s, TransientOptions{Method: method, Until: 1}, func(p *Step) {
 		landed = landed || p.T1 == 0.3
 		for k := range looks {
 			at := p.T0 + (p.T1-p.T0)*float64(k)/(looks-1)
@@ -363,7 +378,9 @@ func TestJumps(t *testing.T) {
 	require.True(t, landed)
 }
 
-func TestHeldJump(t *testing.T) {
+func TestHeldJump(t *testing.T) { eachMethod(t, heldJumpIsSeen) }
+
+func heldJumpIsSeen(t *testing.T, method Method) {
 	n := newNet(t)
 	n.hold("in", jump{1, -2, 0.25})
 	n.add("R", resistor(1e3), "in", "a")
@@ -371,7 +388,7 @@ func TestHeldJump(t *testing.T) {
 	n.add("C", capacitor{1e-6, 0}, "in", "a")
 	s := n.build()
 	x := make([]float64, s.Size())
-	transient(t, s, TransientOptions{Until: 0.5}, func(p *Step) {
+	transient(t, s, TransientOptions{Method: method, Until: 0.5}, func(p *Step) {
 		p.At(p.T0, x)
 		if p.T0 < 0.25 {
 			require.Equal(t, 1.0, x[n.u("in")])
@@ -410,7 +427,9 @@ func TestCornersAreLandedOn(t *testing.T) {
 	require.Less(t, stats.Steps, 800)
 }
 
-func TestColdStart(t *testing.T) {
+func TestColdStart(t *testing.T) { eachMethod(t, coldStartIsConsistent) }
+
+func coldStartIsConsistent(t *testing.T, method Method) {
 	n := newNet(t)
 	n.hold("vp", level(5))
 	n.add("R", resistor(2e3), "vp", "a")
@@ -420,10 +439,10 @@ func TestColdStart(t *testing.T) {
 	s := n.build()
 	_, inside := s.Unknowns(l)
 	first := true
-	d, _ := worst(t, s, TransientOptions{Until: 20e-3, Cold: true}, n.u("a"), func(t float64) float64 { return 5 - 3.5*math.Exp(-t/2e-3) })
+	d, _ := worst(t, s, TransientOptions{Method: method, Until: 20e-3, Cold: true}, n.u("a"), func(t float64) float64 { return 5 - 3.5*math.Exp(-t/2e-3) })
 	near(t, 0, d/3.5, defaultAccuracy)
 	x := make([]float64, s.Size())
-	transient(t, s, TransientOptions{Until: 1e-3, Cold: true}, func(p *Step) {
+	transient(t, s, TransientOptions{Method: method, Until: 1e-3, Cold: true}, func(p *Step) {
 		if first {
 			p.At(0, x)
 			near(t, 2e-3, x[inside[0]], 1e-6)
@@ -434,7 +453,9 @@ func TestColdStart(t *testing.T) {
 }
 
 // TestChargeIsConserved watches the charge of a node that only capacitors touch.
-func TestChargeIsConserved(t *testing.T) {
+func TestChargeIsConserved(t *testing.T) { eachMethod(t, chargeIsConserved) }
+
+func chargeIsConserved(t *testing.T, method Method) {
 	n := newNet(t)
 	n.hold("in", sine{3, 1e3})
 	n.add("C1", capacitor{1e-9, 0.4}, "in", "x")
@@ -442,17 +463,19 @@ func TestChargeIsConserved(t *testing.T) {
 	n.add("R", resistor(1e3), "in", "gnd")
 	s := n.build()
 	x, want := n.u("x"), 3e-9*0.9-1e-9*0.4
-	transient(t, s, TransientOptions{Until: 1e-2, Cold: true}, func(p *Step) {
+	transient(t, s, TransientOptions{Method: method, Until: 1e-2, Cold: true}, func(p *Step) {
 		near(t, want, p.r.method.end().q[x], 1e-12*want)
 	})
 }
 
 // TestTellegen checks at every accepted point that the powers of all devices and sources sum to zero, dynamic currents included.
-func TestTellegen(t *testing.T) {
+func TestTellegen(t *testing.T) { eachMethod(t, powersSumToZero) }
+
+func powersSumToZero(t *testing.T, method Method) {
 	n := pair(t, sine{0.5, 1e6})
 	s := n.build()
 	points := 0
-	transient(t, s, TransientOptions{Until: 2e-6}, func(p *Step) {
+	transient(t, s, TransientOptions{Method: method, Until: 2e-6}, func(p *Step) {
 		e := p.r.method.end()
 		sum, gross := 0.0, 0.0
 		// The sum over the devices of volts times current leaving is X (F + dQ/dt); free rows must vanish by themselves.
@@ -475,12 +498,14 @@ func TestTellegen(t *testing.T) {
 	require.Greater(t, points, 20)
 }
 
-func TestDeterminism(t *testing.T) {
+func TestDeterminism(t *testing.T) { eachMethod(t, runsRepeat) }
+
+func runsRepeat(t *testing.T, method Method) {
 	s := pair(t, sine{0.5, 1e6}).build()
 	run := func() []float64 {
 		var all []float64
 		x := make([]float64, s.Size())
-		transient(t, s, TransientOptions{Until: 3e-6}, func(p *Step) {
+		transient(t, s, TransientOptions{Method: method, Until: 3e-6}, func(p *Step) {
 			p.At(p.T0+0.3*(p.T1-p.T0), x)
 			all = append(append(all, p.T1), x...)
 		})
@@ -507,11 +532,13 @@ func TestMaxStep(t *testing.T) {
 }
 
 // TestBlowUp integrates y' = y^2 from 1, which ends at t = 1.
-func TestBlowUp(t *testing.T) {
+func TestBlowUp(t *testing.T) { eachMethod(t, blowUpIsReported) }
+
+func blowUpIsReported(t *testing.T, method Method) {
 	n := newNet(t)
 	n.add("square", law{pins: 1, f: func(_ float64, y, f []float64, df [][]float64) { f[0], df[0][0] = -y[0]*y[0], -2*y[0] }}, "y")
 	s := n.build()
-	stats, err := s.Transient(context.Background(), TransientOptions{Until: 2, Start: []float64{0, 1}}, func(*Step) error { return nil })
+	stats, err := s.Transient(context.Background(), TransientOptions{Method: method, Until: 2, Start: []float64{0, 1}}, func(*Step) error { return nil })
 	var e *StepError
 	require.ErrorAs(t, err, &e)
 	near(t, 1, e.Time, 1e-3)
@@ -533,6 +560,7 @@ func TestTransientOptionsAndEnds(t *testing.T) {
 		"MaxStep":  {Until: 1, MaxStep: -1},
 		"Accuracy": {Until: 1, Accuracy: math.NaN()},
 		"Start":    {Until: 1, Start: []float64{1}},
+		"Method":   {Until: 1, Method: -1},
 	} {
 		_, err := s.Transient(context.Background(), o, func(*Step) error { return nil })
 		var e *OptionError
@@ -555,20 +583,24 @@ func TestTransientOptionsAndEnds(t *testing.T) {
 }
 
 // TestStepsFollowTheScale: even where hardly any accuracy is asked for, and nothing moves, a signal is not stepped over.
-func TestStepsFollowTheScale(t *testing.T) {
+func TestStepsFollowTheScale(t *testing.T) { eachMethod(t, stepsFollowTheScale) }
+
+func stepsFollowTheScale(t *testing.T, method Method) {
 	n := newNet(t)
 	n.hold("in", sine{1e-12, 1e3})
 	n.hold("vp", level(5))
 	n.add("R", resistor(1e3), "vp", "a")
 	n.add("R2", resistor(1e9), "in", "a")
-	transient(t, n.build(), TransientOptions{Until: 10e-3, Accuracy: 0.9}, func(p *Step) {
+	transient(t, n.build(), TransientOptions{Method: method, Until: 10e-3, Accuracy: 0.9}, func(p *Step) {
 		require.LessOrEqual(t, p.T1-p.T0, 1e-3/stepsPerScale*(1+1e-9))
 	})
 }
 
 // TestStagesAreSolved: of the error that a waveform may have, Newton's method takes next to nothing. Without charges it is all there is at the ends
 // of the steps.
-func TestStagesAreSolved(t *testing.T) {
+func TestStagesAreSolved(t *testing.T) { eachMethod(t, stagesAreSolved) }
+
+func stagesAreSolved(t *testing.T, method Method) {
 	for _, accuracy := range []float64{1e-3, 1e-4, 1e-5, 1e-6} {
 		n := newNet(t)
 		n.hold("in", sine{3, 50})
@@ -576,7 +608,7 @@ func TestStagesAreSolved(t *testing.T) {
 		n.add("D", junction{1e-14, 0.0259, 0}, "a", "gnd")
 		s := n.build()
 		largest := 0.0
-		stats := transient(t, s, TransientOptions{Until: 0.1, Accuracy: accuracy}, func(p *Step) {
+		stats := transient(t, s, TransientOptions{Method: method, Until: 0.1, Accuracy: accuracy}, func(p *Step) {
 			x := p.End()
 			v := x[n.u("a")]
 			slope := 1/1e3 + 1e-14/0.0259*math.Exp(v/0.0259)
