@@ -96,11 +96,7 @@ func TestSeriesRLC(t *testing.T) {
 		if r > 1e3 {
 			run = 30e-3
 		}
-		off := 1.0
-		if r < 10 {
-			off = addingUp // a Q of 25
-		}
-		transientWithin(t, off, fmt.Sprintf("R = %g", r), fmt.Sprintf(`
+		transientWithin(t, 1, fmt.Sprintf("R = %g", r), fmt.Sprintf(`
 rail vp = 1V
 vp -- R1 %gohm -- x -- L1 10mH start 2mA -- y -- C1 1uF start -0.7V -- gnd
 bench b {

@@ -35,10 +35,9 @@ const (
 	rounded = 1e-12
 	// usual is the accuracy of a circuit that sets none: the relative error to expect of a waveform.
 	usual = 1e-4
-	// addingUp is how many times the accuracy may be off in a circuit that keeps its errors: a resonance that rings for many periods, a capacitor
-	// that gathers what every period of a carrier leaves. What is required there is 1e-3 of the swing at the usual accuracy, in proportion; the
-	// language reference says so.
-	addingUp = 10
+	// addingUp is how many times the accuracy may be off in a circuit that keeps its errors: a capacitor that gathers what every one of hundreds of
+	// periods leaves. The language reference says so.
+	addingUp = 4
 )
 
 // tester is what *testing.T and *rapid.T share.
