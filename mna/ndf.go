@@ -139,12 +139,13 @@ func (m *ndf) predict(x []float64) {
 		slope = slope*m.distance[j-1] + m.reach[j-1]
 		weights[j] = slope - m.alpha*m.reach[j]
 	}
-	for i := range x {
+	reach, ahead := m.reach[1:k+1], weights[1:k+1]
+	for i := m.r.s.first(); i < len(x); i++ {
 		dx, dq := &m.x[i], &m.q[i]
 		v, c := dx[0], 0.0
-		for j := 1; j <= k; j++ {
-			v += m.reach[j] * dx[j]
-			c += weights[j] * dq[j]
+		for j, w := range ahead {
+			v += reach[j] * dx[j+1]
+			c += w * dq[j+1]
 		}
 		x[i], m.constant[i] = v, c
 	}
@@ -202,13 +203,15 @@ func (m *ndf) judge() (float64, int, float64) {
 // extend takes the differences to the attempted point, up to the given degree.
 func (m *ndf) extend(degree int) {
 	m.degree = degree
-	for i := range m.x {
+	inverse := m.inverse[:degree]
+	for i := m.r.s.first(); i < len(m.x); i++ {
 		x, q := &m.nextX[i], &m.nextQ[i]
 		pastX, pastQ := &m.x[i], &m.q[i]
-		x[0], q[0] = m.attempted.x[i], m.attempted.q[i]
-		for j := range degree {
-			x[j+1] = (x[j] - pastX[j]) * m.inverse[j]
-			q[j+1] = (q[j] - pastQ[j]) * m.inverse[j]
+		dx, dq := m.attempted.x[i], m.attempted.q[i]
+		x[0], q[0] = dx, dq
+		for j, s := range inverse {
+			dx, dq = (dx-pastX[j])*s, (dq-pastQ[j])*s
+			x[j+1], q[j+1] = dx, dq
 		}
 	}
 }
@@ -227,12 +230,11 @@ func (m *ndf) estimate(order int) (float64, int) {
 	w.work.Solves++
 	ratio, worst := 0.0, 0
 	for i, e := range w.update {
-		e = math.Abs(e) * m.perError(first+i)
-		if !(e <= math.MaxFloat64) {
-			return math.Inf(1), first + i
-		}
-		if e > ratio {
+		if e = math.Abs(e) * m.weight(first+i); !(e <= ratio) {
 			ratio, worst = e, first+i
+			if !(e <= math.MaxFloat64) {
+				return math.Inf(1), worst
+			}
 		}
 	}
 	return ratio, worst
@@ -247,23 +249,19 @@ func (m *ndf) largest(order int) (float64, int) {
 	return ratio, worst
 }
 
-// perError is 1/allowed error of an unknown.
-func (m *ndf) perError(i int) float64 {
-	return min(m.r.perError[i], 1/(m.r.tolerance*math.Abs(m.attempted.x[i]-m.newest.x[i])))
-}
+// weight is 1/allowed error of an unknown in the attempted step.
+func (m *ndf) weight(i int) float64 { return m.r.weight(i, m.attempted.x[i]-m.newest.x[i]) }
 
-// bent returns the largest ratio of the estimated to the allowed error of the interpolation.
-func (m *ndf) bent(k int) (float64, int) {
-	r := m.r
-	scale := m.bend(k) / r.dense
+// bent returns the largest ratio of the estimated to the allowed error of the interpolation of the given order.
+func (m *ndf) bent(order int) (float64, int) {
+	scale := m.bend(order) / m.r.dense
 	ratio, worst := 0.0, 0
-	for i := r.s.first(); i < len(m.x); i++ {
-		e := math.Abs(scale*m.nextX[i][k+1]) * m.perError(i)
-		if !(e <= math.MaxFloat64) {
-			return math.Inf(1), i
-		}
-		if e > ratio {
+	for i := m.r.s.first(); i < len(m.x); i++ {
+		if e := math.Abs(scale*m.nextX[i][order+1]) * m.weight(i); !(e <= ratio) {
 			ratio, worst = e, i
+			if !(e <= math.MaxFloat64) {
+				return math.Inf(1), i
+			}
 		}
 	}
 	return ratio, worst
@@ -287,7 +285,7 @@ func (m *ndf) beyondNoise() (float64, int) {
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
 		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - noiseMargin*math.Abs(m.noise[i])
-		e *= m.perError(first + i)
+		e *= m.weight(first + i)
 		if !(e <= math.MaxFloat64) {
 			return math.Inf(1), first + i
 		}

@@ -26,14 +26,15 @@ const (
 
 // resolution knows how far every unknown has swung, and so what error is allowed.
 type resolution struct {
-	tolerance float64 // allowed error of a step beside the swing
-	dense     float64 // allowed error of the interpolation, beside tolerance
-	branch    []bool
-	low, high []float64 // of each unknown so far
-	stimulus  float64   // V or A, the largest swing of a signal seen or ahead
-	swing     []float64 // of each unknown, floors included
-	perError  []float64 // of each unknown: 1/allowed error of a step over which it moves by no more than its swing
-	worst     int       // the unknown with the largest error in the last step
+	tolerance  float64 // allowed error of a step beside the swing
+	dense      float64 // allowed error of the interpolation, beside tolerance
+	branch     []bool
+	low, high  []float64 // of each unknown so far
+	stimulus   float64   // V or A, the largest swing of a signal seen or ahead
+	swing      []float64 // of each unknown, floors included
+	allowedFor float64   // V or A, the stimulus that the floors were taken from
+	perError   []float64 // of each unknown: 1/allowed error of a step over which it moves by no more than its swing
+	worst      int       // the unknown with the largest error in the last step
 }
 
 // newResolution returns the resolution for a method of the given order.
@@ -63,19 +64,36 @@ func (z *resolution) lookAhead(signals []Signal, t, until float64) {
 func (z *resolution) anchor(x []float64) {
 	copy(z.low, x)
 	copy(z.high, x)
+	z.allow()
 }
 
 // widen takes x into the swings.
 func (z *resolution) widen(x []float64) {
-	largest := 0.0
+	wider := false
 	for i, v := range x {
-		z.low[i], z.high[i] = min(z.low[i], v), max(z.high[i], v)
-		if !z.branch[i] {
-			largest = max(largest, math.Abs(v))
+		if v < z.low[i] {
+			z.low[i], wider = v, true
+		}
+		if v > z.high[i] {
+			z.high[i], wider = v, true
 		}
 	}
+	if wider || z.stimulus > z.allowedFor {
+		z.allow()
+	}
+}
+
+// allow takes the allowed errors from the swings.
+func (z *resolution) allow() {
+	largest := 0.0
+	for i, branch := range z.branch {
+		if !branch {
+			largest = max(largest, -z.low[i], z.high[i])
+		}
+	}
+	z.allowedFor = z.stimulus
 	common := max(stimulusShare*z.stimulus, largestShare*largest)
-	for i := range x {
+	for i := range z.swing {
 		floor := max(leastVoltage, common)
 		if z.branch[i] {
 			floor = max(leastCurrent, stimulusSiemens*common)
@@ -84,6 +102,15 @@ func (z *resolution) widen(x []float64) {
 		z.swing[i] = max(z.high[i]-z.low[i], sizeShare*size, floor)
 		z.perError[i] = 1 / z.local(i, 0)
 	}
+}
+
+// weight returns 1/allowed error of an unknown in a step over which it moves by the given amount.
+func (z *resolution) weight(i int, move float64) float64 {
+	w := z.perError[i]
+	if move = math.Abs(move); move > z.swing[i] {
+		w *= z.swing[i] / move
+	}
+	return w
 }
 
 // local returns the allowed error of an unknown in a step over which it moves by the given amount.

@@ -58,7 +58,6 @@ func (r *integration) enter(from *point) error {
 	r.lookAhead(r.s.signals, r.t, r.o.Until)
 	if r.stats.Restarts == 1 {
 		r.anchor(from.x)
-		r.widen(from.x)
 	}
 	start, err := r.consistent(from)
 	if r.ctx.Err() != nil {
