@@ -35,9 +35,6 @@ const (
 	rounded = 1e-12
 	// usual is the accuracy of a circuit that sets none: the relative error to expect of a waveform.
 	usual = 1e-4
-	// addingUp is how many times the accuracy may be off in a circuit that keeps its errors: a capacitor that gathers what every one of hundreds of
-	// periods leaves. The language reference says so.
-	addingUp = 4
 )
 
 // tester is what *testing.T and *rapid.T share.

@@ -15,6 +15,9 @@ import "math"
 const (
 	ndfMost   = 5
 	ndfDegree = ndfMost + 2 // of the highest divided difference
+	// ndfShare is the share of the accuracy that is allowed as the error of a step. Errors of up to a hundred steps that add up leave room for it; see
+	// forgotten for longer memories.
+	ndfShare = 0.02
 )
 
 // kappa returns the coefficient of a formula, from table 1 of the paper.
@@ -38,10 +41,12 @@ type ndf struct {
 	newton  stageNewton
 	starter *trbdf2
 
-	started bool // the starter has taken its step
-	order   int  // of the step to try, and of the last one
-	since   int  // accepted steps since the order changed
-	ramp    bool // no step since the start was limited by its error
+	started bool    // the starter has taken its step
+	order   int     // of the step to try, and of the last one
+	since   int     // accepted steps since the order changed
+	memory  float64 // by how much the allowed error is reduced, see recall
+	lasting float64 // number of steps that the share of an error that lasts does, at the last choice of the order
+	ramp    bool    // no step since the start was limited by its error
 
 	known  int                // points that the differences rest on
 	times  [ndfDegree]float64 // s, the newest first
@@ -70,7 +75,7 @@ func newNDF(r *integration) *ndf {
 	s := r.s
 	n := len(s.names)
 	return &ndf{
-		r: r, control: newControl(ndfMost + 1), newton: newStageNewton(r), starter: newTRBDF2(r),
+		r: r, memory: 1, control: newControl(ndfMost + 1), newton: newStageNewton(r), starter: newTRBDF2(r),
 		x: make([]ladder, n), q: make([]ladder, n), nextX: make([]ladder, n), nextQ: make([]ladder, n), newest: s.newPoint(), attempted: s.newPoint(),
 		constant: make([]float64, n), error: make([]float64, n-s.first()), noise: make([]float64, n-s.first()),
 	}
@@ -222,7 +227,7 @@ func (m *ndf) estimate(order int) (float64, int) {
 	w, r := m.r.w, m.r
 	first := r.s.first()
 	share, alpha := m.share(order)
-	scale := share * m.reach[order+1] * alpha * m.distance[0]
+	scale := share * m.reach[order+1] * alpha * m.distance[0] * m.memory
 	for i := range w.update {
 		w.update[i] = scale * m.nextQ[first+i][order+1]
 	}
@@ -351,11 +356,75 @@ func (m *ndf) propose(ratio float64) float64 {
 		most = growStart
 	}
 	if m.ramp || m.since >= k {
+		m.memory = m.recall()
 		if f := m.choose(); m.nextOrder != k {
 			return math.Min(f, most)
 		}
 	}
 	return math.Min(m.control.factor(ratio), most)
+}
+
+const (
+	// forgotten is the number of steps over which errors may add up in the same direction as far as the allowed error of a step provides for it.
+	forgotten = 60
+	// recallMost bounds what a longer memory takes off the allowed error.
+	recallMost = 16
+)
+
+// recall returns by how much the circuit's memory reduces the allowed error of a step: in a resonance, or behind a reservoir, what hundreds of steps leave adds up.
+//
+// Of an error e of the unknowns, e1 = A e with A = (G + alpha C)^-1 alpha C is what lasts longer than a step, and e2 = (2 A - 1) e1 what a trapezoidal step
+// of 2/alpha, which damps no oscillation, leaves of that. The energies of e1 and e2 tell how long it lasts. The lesser of two choices of the order counts: a
+// circuit with gain may enlarge an error at first.
+func (m *ndf) recall() float64 {
+	made, _ := m.estimate(m.order)
+	if made == 0 {
+		return 1
+	}
+	e := m.r.w.update
+	m.keep()
+	lasting := m.largestOf(e) / made
+	before := m.keep()
+	for i, v := range m.error {
+		e[i] = 2*e[i] - v
+	}
+	if after := m.energy(); after < before {
+		lasting *= math.Min(recallMost*forgotten, 4/(m.alpha*m.distance[0])*before/(before-after))
+	} else {
+		lasting *= recallMost * forgotten
+	}
+	lesser := math.Min(lasting, m.lasting)
+	m.lasting = lasting
+	return math.Max(1, math.Min(recallMost, lesser/forgotten))
+}
+
+// largestOf returns the largest of errors beside the allowed ones.
+func (m *ndf) largestOf(errors []float64) float64 {
+	largest, first := 0.0, m.r.s.first()
+	for i, e := range errors {
+		largest = max(largest, math.Abs(e)*m.weight(first+i))
+	}
+	return largest
+}
+
+// keep applies (G + alpha C)^-1 alpha C to the workspace's update, leaves in m.error what that was before, and returns its energy.
+func (m *ndf) keep() float64 {
+	energy := m.energy()
+	m.r.w.lu.Solve(m.r.w.update)
+	m.r.w.work.Solves++
+	return energy
+}
+
+// energy moves the workspace's update to m.error and leaves alpha C times it there. It returns the energy, in W, that it stands for.
+func (m *ndf) energy() float64 {
+	w := m.r.w
+	copy(m.error, w.update)
+	w.chargeRates(w.update, m.error, m.alpha)
+	sum := 0.0
+	for i, e := range m.error {
+		sum += math.Abs(e * w.update[i])
+	}
+	return sum
 }
 
 // choose sets the order that allows the longest step, and returns the factor for it.

@@ -3,10 +3,9 @@ package mna
 import "math"
 
 const (
-	// The allowed error of one step is localShare of the accuracy a user asks for, at an accuracy of 1e-3 or worse: errors of many steps add
+	// The allowed error of one step is a share of the accuracy a user asks for, at an accuracy of 1e-3 or worse: errors of many steps add
 	// up. From there it falls faster than the accuracy. A local error e costs e^(1/(k+1)) fewer steps with a method of order
 	// k, so that the sum goes with e^(k/(k+1)); for the sum to go with the accuracy, e must go with its power (k+1)/k.
-	localShare    = 0.03
 	localAccuracy = 1e-3
 	// denseShare is the share for the interpolation within a step, whose errors do not add up.
 	denseShare = 0.15
@@ -37,8 +36,8 @@ type resolution struct {
 	worst      int       // the unknown with the largest error in the last step
 }
 
-// newResolution returns the resolution for a method of the given order.
-func newResolution(s *System, accuracy, order float64) *resolution {
+// newResolution returns the resolution for a method of the given order, which may make the given share of the accuracy as the error of a step.
+func newResolution(s *System, accuracy, localShare, order float64) *resolution {
 	n := len(s.names)
 	tolerance := localShare * accuracy * math.Pow(math.Min(1, accuracy/localAccuracy), 1/order)
 	return &resolution{

@@ -198,10 +198,10 @@ func newIntegration(ctx context.Context, s *System, o TransientOptions) *integra
 	r.step.r = r
 	switch o.Method {
 	case TRBDF2:
-		r.resolution = newResolution(s, o.Accuracy, trbdf2Order)
+		r.resolution = newResolution(s, o.Accuracy, trbdf2Share, trbdf2Order)
 		r.method = newTRBDF2(r)
 	default:
-		r.resolution = newResolution(s, o.Accuracy, ndfMost)
+		r.resolution = newResolution(s, o.Accuracy, ndfShare, ndfMost)
 		r.method = newNDF(r)
 	}
 	return r

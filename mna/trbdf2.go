@@ -20,6 +20,8 @@ const (
 	errorConstant = (-3*gamma*gamma + 4*gamma - 2) / (12 * (2 - gamma))
 
 	trbdf2Order = 2
+	// trbdf2Share is the share of the accuracy that is allowed as the error of a step: errors of many steps add up.
+	trbdf2Share = 0.05
 )
 
 // trbdf2 is the TR-BDF2 method.
