@@ -27,7 +27,7 @@ import (
 )
 
 // diagrams is where TestWorkPrecision writes its table and its diagrams.
-var diagrams = flag.String("diagrams", "", "write work-precision diagrams of all circuits to this `folder`, which takes a minute")
+var diagrams = flag.String("diagrams", "", "write work-precision diagrams of all circuits to this `folder`")
 
 // workload is a run with a reference solution.
 type workload struct {
@@ -294,11 +294,19 @@ type powersOfTen struct{}
 
 func (powersOfTen) Ticks(low, high float64) []plot.Tick {
 	var ticks []plot.Tick
-	for e := math.Floor(math.Log10(low)); e <= math.Log10(high)+1e-9; e++ {
-		label := strconv.FormatFloat(math.Pow(10, e), 'g', 3, 64)
-		ticks = append(ticks, plot.Tick{Value: math.Pow(10, e), Label: label})
+	first, last := int(math.Floor(math.Log10(low))), math.Log10(high)+1e-9
+	every := 1
+	if last-float64(first) > 5 {
+		every = 2
+	}
+	for e := first; float64(e) <= last; e++ {
+		label := ""
+		if (e-first)%every == 0 {
+			label = fmt.Sprint("1e", e)
+		}
+		ticks = append(ticks, plot.Tick{Value: math.Pow10(e), Label: label})
 		for m := 2.0; m < 10; m++ {
-			if v := m * math.Pow(10, e); v <= high {
+			if v := m * math.Pow10(e); v <= high {
 				ticks = append(ticks, plot.Tick{Value: v})
 			}
 		}

@@ -159,15 +159,18 @@ func (r *integration) euler(from *point, t, h float64, climb bool) (*point, erro
 	w.eval.Limit = false
 	p := problem{time: t, drive: 1, alpha: 1 / h, charge: from.q}
 	n, err := w.newton(r.ctx, &p, biasIterations)
-	if err != nil && climb {
+	switch {
+	case err == nil:
+		w.carry(w.update)
+	case climb:
 		c := r.s.newClimb(r.ctx, w, p, r.log)
 		c.iterations = n
 		err = c.run()
+		w.evaluate(&p)
 	}
 	if err != nil {
 		return nil, r.fail(r.resisting(), err)
 	}
-	w.evaluate(&p)
 	to := r.s.newPoint()
 	to.t = t
 	copy(to.x, w.eval.X)
