@@ -1,6 +1,9 @@
 package sparse
 
-import "fmt"
+import (
+	"fmt"
+	"slices"
+)
 
 // Analysis is what the pattern alone decides: a row for every column, and the order of elimination.
 // It is immutable and shared by any number of factorisations.
@@ -8,6 +11,10 @@ type Analysis struct {
 	pattern *Pattern
 	rowOf   []int32 // rowOf[j] is the row matched to column j: the preferred pivot
 	order   []int32 // order[k] is the column eliminated k-th
+	// The order runs through diagonal blocks; entries outside them stand above. Block i has the positions blocks[i] to blocks[i+1]-1.
+	blocks   []int32
+	block    []int32 // of each column
+	rowBlock []int32 // of each row: that of the column it is matched to
 }
 
 // StructuralError says that no values can make the matrix regular: some rows and columns cannot be matched.
@@ -29,8 +36,68 @@ func Analyse(p *Pattern) (*Analysis, error) {
 		return nil, err
 	}
 	a.rowOf = m.rowOf
-	a.order = minimumDegree(p, m.columnOf)
+	a.split(m.columnOf)
 	return a, nil
+}
+
+// split finds the diagonal blocks and orders the columns within each.
+func (a *Analysis) split(columnOf []int32) {
+	p := a.pattern
+	members, start := components(p, columnOf)
+	a.block, a.rowBlock = make([]int32, p.n), make([]int32, p.n)
+	for i := range len(start) - 1 {
+		for _, j := range members[start[i]:start[i+1]] {
+			a.block[j] = int32(i)
+		}
+	}
+	for row, j := range columnOf {
+		a.rowBlock[row] = a.block[j]
+	}
+	a.blocks = start
+	if len(start) == 2 {
+		a.order = minimumDegree(p, columnOf)
+		return
+	}
+	a.order = make([]int32, 0, p.n)
+	within := &within{a: a, columnOf: columnOf, local: make([]int32, p.n)}
+	for i := range len(start) - 1 {
+		group := members[start[i]:start[i+1]]
+		slices.Sort(group) // ties are broken as in the whole pattern
+		a.order = append(a.order, within.order(group)...)
+	}
+}
+
+// within orders the columns of single blocks.
+type within struct {
+	a        *Analysis
+	columnOf []int32
+	local    []int32 // of each column of the block: its number there
+}
+
+func (w *within) order(members []int32) []int32 {
+	if len(members) == 1 {
+		return members
+	}
+	for k, j := range members {
+		w.local[j] = int32(k)
+	}
+	p := w.a.pattern
+	block := &Pattern{n: len(members), colStart: make([]int32, len(members)+1)}
+	identity := make([]int32, len(members))
+	for k, j := range members {
+		identity[k] = int32(k)
+		for e := p.colStart[j]; e < p.colStart[j+1]; e++ {
+			if row := p.row[e]; w.a.rowBlock[row] == w.a.block[j] {
+				block.row = append(block.row, w.local[w.columnOf[row]])
+			}
+		}
+		block.colStart[k+1] = int32(len(block.row))
+	}
+	order := minimumDegree(block, identity)
+	for k, j := range order {
+		order[k] = members[j]
+	}
+	return order
 }
 
 // matching is a maximum transversal: Duff, On algorithms for obtaining a maximum transversal, ACM Trans. Math.

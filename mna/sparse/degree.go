@@ -2,6 +2,7 @@ package sparse
 
 import (
 	"math"
+	"math/bits"
 	"slices"
 )
 
@@ -30,7 +31,8 @@ type quotientGraph struct {
 	merged   [][]int32 // of each variable: those merged into it
 	order    []int32
 	dense    []int32
-	left     int32 // variables not yet eliminated
+	near     []uint64 // of each variable and each element: the dense variables it is adjacent to, as far as denseSeen
+	left     int32    // variables not yet eliminated
 
 	// degree buckets: doubly linked lists
 	head, forward, back []int32
@@ -48,7 +50,7 @@ func newQuotientGraph(p *Pattern, columnOf []int32) *quotientGraph {
 		n: n, vars: make([][]int32, n), elements: make([][]int32, n), members: make([][]int32, n),
 		weight: filled(n, 1), degree: make([]int32, n), dead: make([]bool, n), merged: make([][]int32, n), left: int32(n),
 		head: filled(n+1, -1), forward: filled(n, -1), back: filled(n, -1),
-		mark: filled(n, 0), outer: make([]int32, n), outerS: make([]int32, n),
+		mark: filled(n, 0), near: make([]uint64, n), outer: make([]int32, n), outerS: make([]int32, n),
 	}
 	for j := range int32(n) {
 		for k := p.colStart[j]; k < p.colStart[j+1]; k++ {
@@ -68,15 +70,25 @@ func newQuotientGraph(p *Pattern, columnOf []int32) *quotientGraph {
 			g.left--
 		}
 	}
+	for k, i := range g.dense[:min(denseSeen, len(g.dense))] {
+		for _, j := range g.vars[i] {
+			g.near[j] |= 1 << k
+		}
+	}
 	for i := range int32(n) {
 		if g.weight[i] > 0 {
 			g.vars[i] = slices.DeleteFunc(g.vars[i], func(j int32) bool { return g.weight[j] == 0 })
-			g.degree[i] = int32(len(g.vars[i]))
+			g.degree[i] = int32(len(g.vars[i])) + count(g.near[i])
 			g.insert(i)
 		}
 	}
 	return g
 }
+
+// denseSeen is the number of dense variables, rails mostly, that degrees count.
+const denseSeen = 64
+
+func count(set uint64) int32 { return int32(bits.OnesCount64(set)) }
 
 func (g *quotientGraph) insert(i int32) {
 	d := g.degree[i]
@@ -152,6 +164,7 @@ func (g *quotientGraph) gather(p int32) []int32 {
 		for _, i := range g.members[e] {
 			add(i)
 		}
+		g.near[p] |= g.near[e]
 		g.dead[e], g.members[e] = true, nil
 	}
 	return members
@@ -189,6 +202,7 @@ func (g *quotientGraph) update(p int32, members []int32, size int32) []int32 {
 				continue
 			}
 			if g.outer[e] == 0 {
+				g.near[p] |= g.near[e]
 				g.dead[e], g.members[e] = true, nil
 				continue
 			}
@@ -204,7 +218,12 @@ func (g *quotientGraph) update(p int32, members []int32, size int32) []int32 {
 			}
 		}
 		g.vars[i] = vars
-		if d == 0 {
+		far := g.near[p] // of the dense variables, those that i reaches
+		for _, e := range live {
+			far |= g.near[e]
+		}
+		far |= g.near[i]
+		if d == 0 && far == g.near[p] {
 			g.absorb(p, i)
 			size -= g.weight[i]
 			g.left -= g.weight[i]
@@ -212,7 +231,8 @@ func (g *quotientGraph) update(p int32, members []int32, size int32) []int32 {
 			continue
 		}
 		rest := size - g.weight[i]
-		g.degree[i] = max(0, min(g.left-g.weight[i], g.degree[i]+rest, d+rest))
+		known := count(far)
+		g.degree[i] = max(0, min(g.left-g.weight[i]+known, g.degree[i]+rest+count(g.near[p]), d+rest+known, int32(g.n)))
 		kept = append(kept, i)
 	}
 	return kept
@@ -252,7 +272,7 @@ func (g *quotientGraph) mergeTwins(members []int32) []int32 {
 
 // twins reports whether two members have the same neighbours.
 func (g *quotientGraph) twins(a, b int32) bool {
-	return sameSet(g.vars[a], g.vars[b]) && sameSet(g.elements[a], g.elements[b])
+	return g.near[a] == g.near[b] && sameSet(g.vars[a], g.vars[b]) && sameSet(g.elements[a], g.elements[b])
 }
 
 func sameSet(a, b []int32) bool {

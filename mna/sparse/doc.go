@@ -1,14 +1,12 @@
-// Package sparse factors sparse square matrices over float64 and complex128. It knows no circuits.
+// Package sparse solves sparse systems of linear equations, real and complex, of the kind that circuits lead to.
 //
-// The work is split so that what depends only on the pattern is done once:
+// The work is split by what it depends on. [Analyse] looks at the pattern alone: it matches every column with a row (Duff, 1981), finds the block
+// triangular form (Tarjan, 1972) and orders the columns of each block so that the factors stay sparse (approximate minimum degree; Amestoy, Davis & Duff, 1996).
+// [LU.Factor] chooses pivots for given values (Gilbert & Peierls, 1988, with threshold pivoting that prefers the matched entry) and works out the arithmetic that
+// follows from them; [LU.Refactor] repeats that arithmetic for new values, and chooses anew if a pivot has become too small; [LU.Solve],
+// [LU.SolveTranspose] and [LU.SolveMany] use the factors; [LU.Condition] says how far to trust them. Each function cites its source. None of the code is
+// derived from another library.
 //
-//	p, err := sparse.NewPattern(n, rows, cols)  // where the entries are
-//	a, err := sparse.Analyse(p)                 // transversal and fill-reducing order; shareable
-//	f := sparse.NewLU[float64](a)               // one for each goroutine
-//	err = f.Factor(values)                      // pivots and pattern of the factors
-//	err = f.Refactor(values)                    // numbers only, on the frozen pivots
-//	f.Solve(b)
-//
-// Names: n is the order of the matrix, k an entry of the pattern, i a row, j a column; p and q are the
-// permutations of rows and columns, so that the factors are those of (P R A Q) with R the scaling of the rows.
+// Indexes are those of the caller's matrix everywhere, in errors too. Rows are equilibrated by powers of two, so that equations in amperes and in volts, over any
+// number of decades, can stand side by side. Nothing is allocated between two changes of the pivots.
 package sparse
