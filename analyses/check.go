@@ -181,7 +181,7 @@ func (c *checker) solve(ctx context.Context, t *task, bench *netlist.Bench) ([]v
 	}
 	e.progress = c.watch(c.jobs[t.job].File, bench.Name)
 	if setup.Run != nil {
-		if err := e.run(c.recorded(setup)); err != nil {
+		if err := e.run(c.kept(setup), measured(setup)); err != nil {
 			return nil, nil, err
 		}
 	} else if _, err := e.quiescent(); err != nil {
@@ -201,16 +201,22 @@ func (c *checker) solve(ctx context.Context, t *task, bench *netlist.Bench) ([]v
 	return verdicts, plots, err
 }
 
-// recorded lists what the run must record.
-func (c *checker) recorded(setup *netlist.Setup) []netlist.Quantity {
+// kept lists what is asked for as it is over time.
+func (c *checker) kept(setup *netlist.Setup) []netlist.Quantity {
 	var qs []netlist.Quantity
-	for _, x := range setup.Expected {
-		qs = append(qs, x.Quantity)
-	}
 	if c.options.Plots {
 		for _, p := range setup.Plots {
 			qs = append(qs, p.Quantities...)
 		}
+	}
+	return qs
+}
+
+// measured lists what the expectations compare.
+func measured(setup *netlist.Setup) []netlist.Quantity {
+	var qs []netlist.Quantity
+	for _, x := range setup.Expected {
+		qs = append(qs, x.Quantity)
 	}
 	return qs
 }

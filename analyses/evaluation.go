@@ -27,8 +27,8 @@ type evaluation struct {
 	fixed    fixedValues
 }
 
-// fixedValues keeps the numbers that do not depend on the sample or the frequency at which
-// an expression is computed, for instance mean(x) in volts(out) - mean(volts(out)).
+// fixedValues keeps the numbers that do not depend on the frequency at which an expression is
+// computed, for instance quiescent(x) and what reducers make of a run.
 type fixedValues struct {
 	sync.Mutex
 	of map[netlist.Quantity]complex128
@@ -84,15 +84,13 @@ func (e *evaluation) responder() (*responder, error) {
 	return newResponder(e.model, small), nil
 }
 
-// place is where an expression is computed: at a frequency of a curve, at a sample of a recorded
-// waveform, or at neither.
+// place is where an expression is computed: at a frequency of a curve, or at none.
 type place struct {
 	r         *responder // made when first needed
 	frequency float64    // Hz; NaN outside a curve
-	sample    int        // index of a recorded sample; -1 outside a waveform
 }
 
-func nowhere() *place { return &place{frequency: math.NaN(), sample: -1} }
+func nowhere() *place { return &place{frequency: math.NaN()} }
 
 // number computes q at a place. A real quantity has no imaginary part.
 func (e *evaluation) number(q netlist.Quantity, p *place) (complex128, error) {
@@ -100,9 +98,9 @@ func (e *evaluation) number(q netlist.Quantity, p *place) (complex128, error) {
 	case *netlist.Constant:
 		return complex(q.Value, 0), nil
 	case *netlist.Volts, *netlist.Amps, *netlist.Watts, *netlist.Operating:
-		return e.reading(q, p)
+		return e.atRest(q)
 	case *netlist.Quiescent:
-		return e.once(q, func() (complex128, error) { return e.number(q.X, &place{r: p.r, frequency: p.frequency, sample: -1}) })
+		return e.once(q, func() (complex128, error) { return e.number(q.X, &place{r: p.r, frequency: p.frequency}) })
 	case *netlist.Metric:
 		return e.metric(q, p)
 	case *netlist.Reduce:
@@ -131,15 +129,8 @@ func (e *evaluation) once(q netlist.Quantity, compute func() (complex128, error)
 	return v, nil
 }
 
-// reading is an elementary quantity at a recorded sample, or at rest.
-func (e *evaluation) reading(q netlist.Quantity, p *place) (complex128, error) {
-	if p.sample >= 0 {
-		column, err := e.record.column(q)
-		if err != nil {
-			return cmplx.NaN(), err
-		}
-		return complex(column[p.sample], 0), nil
-	}
+// atRest is an elementary quantity at the quiescent point.
+func (e *evaluation) atRest(q netlist.Quantity) (complex128, error) {
 	return e.once(q, func() (complex128, error) {
 		t, err := e.model.tapOf(q)
 		if err != nil {
@@ -207,12 +198,6 @@ func (e *evaluation) search(q *netlist.Metric, r *responder) (*gainSearch, error
 	return s, nil
 }
 
-// unary holds the functions of one real number.
-var unary = map[string]func(float64) float64{
-	"neg": func(x float64) float64 { return -x }, "abs": math.Abs, "sqrt": math.Sqrt, "exp": math.Exp, "ln": math.Log,
-	"log10": math.Log10, "tanh": math.Tanh, "sin": math.Sin, "cos": math.Cos, "atan": math.Atan,
-}
-
 // apply combines quantities at one place.
 func (e *evaluation) apply(q *netlist.Apply, p *place) (complex128, error) {
 	x := make([]complex128, len(q.X))
@@ -225,70 +210,11 @@ func (e *evaluation) apply(q *netlist.Apply, p *place) (complex128, error) {
 		x[i] = v
 		isComplex = isComplex || argument.Describe().Complex
 	}
-	v, ok := combine(q.Op, x, isComplex)
+	f, ok := operationOf(q.Op, isComplex)
 	if !ok {
 		return cmplx.NaN(), fmt.Errorf("the operation %s cannot be computed", q.Op)
 	}
-	return v, nil
-}
-
-// combine applies an operation to numbers. Complex numbers have + - * / and their parts; what else is done to them is
-// done to their magnitude.
-func combine(op string, x []complex128, isComplex bool) (complex128, bool) {
-	switch op {
-	case "+":
-		return x[0] + x[1], true
-	case "-":
-		return x[0] - x[1], true
-	case "*":
-		return x[0] * x[1], true
-	case "/":
-		if !isComplex {
-			return complex(real(x[0])/real(x[1]), 0), true
-		}
-		return x[0] / x[1], true
-	case "||":
-		return x[0] * x[1] / (x[0] + x[1]), true
-	case "real":
-		return complex(real(x[0]), 0), true
-	case "imag":
-		return complex(imag(x[0]), 0), true
-	case "phase":
-		return complex(cmplx.Phase(x[0]), 0), true
-	case "neg":
-		return -x[0], true
-	case "abs":
-		return complex(cmplx.Abs(x[0]), 0), true
-	}
-	r := make([]float64, len(x))
-	for i, v := range x {
-		if r[i] = real(v); isComplex {
-			r[i] = cmplx.Abs(v)
-		}
-	}
-	return combineReal(op, r)
-}
-
-func combineReal(op string, x []float64) (complex128, bool) {
-	switch op {
-	case "^":
-		return complex(math.Pow(x[0], x[1]), 0), true
-	case "min", "max":
-		v := x[0]
-		for _, y := range x[1:] {
-			if op == "min" {
-				v = math.Min(v, y)
-			} else {
-				v = math.Max(v, y)
-			}
-		}
-		return complex(v, 0), true
-	}
-	f, ok := unary[op]
-	if !ok {
-		return cmplx.NaN(), false
-	}
-	return complex(f(x[0]), 0), true
+	return f(x), nil
 }
 
 // word computes a quantity that is a word, at rest or, in a bench with a run, over the window: then
@@ -309,7 +235,7 @@ func (e *evaluation) word(q netlist.Quantity, want string) (word string, at floa
 	if err != nil {
 		return "", math.NaN(), err
 	}
-	v, err := t.read(x, 0)
+	v, err := t.at(x, 0)
 	return v.Word, math.NaN(), err
 }
 

@@ -42,7 +42,8 @@ func Measure(ctx context.Context, setup *netlist.Setup, quantities ...string) ([
 		return nil, err
 	}
 	if setup.Run != nil {
-		if err := e.run(qs); err != nil {
+		kept, measured := sorted(qs)
+		if err := e.run(kept, measured); err != nil {
 			return nil, err
 		}
 	}
@@ -55,6 +56,18 @@ func Measure(ctx context.Context, setup *netlist.Setup, quantities ...string) ([
 		values = append(values, v)
 	}
 	return values, nil
+}
+
+// sorted parts the waveforms from what is measured on some.
+func sorted(qs []netlist.Quantity) (waveforms, others []netlist.Quantity) {
+	for _, q := range qs {
+		if q.Describe().Shape == netlist.Waveform {
+			waveforms = append(waveforms, q)
+		} else {
+			others = append(others, q)
+		}
+	}
+	return waveforms, others
 }
 
 // value computes a quantity of any shape.

@@ -97,14 +97,12 @@ func (w *Waveform) sampled(n int) (times, values []float64, err error) {
 		}
 		return times, values, nil
 	}
-	for i := range w.steps() {
-		_, t0, h := w.piece(i)
-		for k := range samplesPerStep {
-			v := w.values[samplesPerStep*i+k]
-			if k == 0 && i > 0 && v == values[len(values)-1] {
+	for p := range w.pieces() {
+		for k, v := range p.y {
+			if k == 0 && len(values) > 0 && v == values[len(values)-1] {
 				continue
 			}
-			times = append(times, t0+h*float64(k)/(samplesPerStep-1))
+			times = append(times, p.time(float64(k)/(samplesPerStep-1)))
 			values = append(values, v)
 		}
 	}
@@ -267,7 +265,7 @@ func Waveforms(ctx context.Context, d *netlist.Design, b *netlist.Bench, o WaveO
 	if len(qs) == 0 {
 		return nil, &InputError{Message: "the bench neither plots nor measures a waveform; name the quantities"}
 	}
-	if err := e.run(qs); err != nil {
+	if err := e.run(qs, nil); err != nil {
 		return nil, err
 	}
 	return e.traces(qs, o.Points)

@@ -8,29 +8,35 @@ import (
 	"poise/netlist"
 )
 
-// A tap reads one circuit quantity off solution vectors. Taps hold probes of their own
-// and so belong to one goroutine.
+// A tap reads one circuit quantity off solution vectors. What it reads of a point it holds in a slot, until the slots of a
+// piece's four points make the samples of the piece. Taps hold probes of their own and so belong to one goroutine.
 type tap interface {
 	// rest returns the quantity at a quiescent solution.
 	rest(x []float64) (float64, error)
-	// sample fills out with the quantity at the four samples of a step of length h.
-	sample(s *stepSamples, out []float64) error
+	// load reads a point, the solution x at t seconds, into a slot.
+	load(slot int, x []float64, t float64) error
+	// read fills out with the quantity at four equally spaced points over h seconds, which have been loaded.
+	read(at *slots, h float64, out *samples)
 	// cubic reports whether the quantity is a cubic within a step, as the integrator's own unknowns are.
 	cubic() bool
 }
 
-// stepSamples holds the solution at the four samples of one step.
-type stepSamples struct {
-	x [samplesPerStep][]float64
-	t [samplesPerStep]float64 // s
-	h float64                 // s, from the first to the last sample
+// slotted holds a number for every slot.
+type slotted [allSlots]float64
+
+func (s *slotted) read(at *slots) (y samples) {
+	for k, slot := range at {
+		y[k] = s[slot]
+	}
+	return y
 }
 
-// rate turns four samples of y into those of dy/dt: the slopes of their cubic.
-func (s *stepSamples) rate(y *[samplesPerStep]float64) (rate [samplesPerStep]float64) {
+// rate returns the slope of the cubic through four slots over h seconds.
+func (s *slotted) rate(at *slots, h float64) (rate samples) {
+	y := s.read(at)
 	c := newCubic(y[:])
 	for k := range rate {
-		rate[k] = c.slope(float64(k)/(samplesPerStep-1)) / s.h
+		rate[k] = c.slope(float64(k)/(samplesPerStep-1)) / h
 	}
 	return rate
 }
@@ -54,6 +60,7 @@ func (m *model) tapOf(q netlist.Quantity) (tap, error) {
 type voltsTap struct {
 	plus, minus mna.Unknown
 	free        bool // neither node is held by a signal
+	volts       slotted
 }
 
 func (m *model) voltsTap(plus, minus string) (tap, error) {
@@ -66,25 +73,27 @@ func (m *model) voltsTap(plus, minus string) (tap, error) {
 		return nil, err
 	}
 	free := func(u mna.Unknown) bool { return u == mna.Ground || int(u) > m.system.Held() }
-	return voltsTap{p, n, free(p) && free(n)}, nil
+	return &voltsTap{plus: p, minus: n, free: free(p) && free(n)}, nil
 }
 
-func (v voltsTap) rest(x []float64) (float64, error) { return x[v.plus] - x[v.minus], nil }
+func (v *voltsTap) rest(x []float64) (float64, error) { return x[v.plus] - x[v.minus], nil }
 
-func (v voltsTap) cubic() bool { return v.free }
+func (v *voltsTap) cubic() bool { return v.free }
 
-func (v voltsTap) sample(s *stepSamples, out []float64) error {
-	for k := range out {
-		out[k] = s.x[k][v.plus] - s.x[k][v.minus]
-	}
+func (v *voltsTap) load(slot int, x []float64, _ float64) error {
+	v.volts[slot] = x[v.plus] - x[v.minus]
 	return nil
 }
+
+func (v *voltsTap) read(at *slots, _ float64, out *samples) { *out = v.volts.read(at) }
 
 // currentTap reads a sum of pin currents.
 type currentTap struct {
 	sign   float64
 	probes []*mna.Probe
 	pins   []int
+	amps   slotted // the resistive part
+	charge slotted // C, whose rate is the rest
 }
 
 func (m *model) currentTap(sign float64, pins ...pinOfDevice) *currentTap {
@@ -142,27 +151,29 @@ func (c *currentTap) rest(x []float64) (float64, error) {
 
 func (c *currentTap) cubic() bool { return false }
 
-func (c *currentTap) sample(s *stepSamples, out []float64) error {
-	clear(out)
+func (c *currentTap) load(slot int, x []float64, t float64) error {
+	amps, charge := 0.0, 0.0
 	for i, p := range c.probes {
-		var charge [samplesPerStep]float64
-		for k := range out {
-			p.Load(s.x[k], s.t[k])
-			out[k] += c.sign * p.Current(c.pins[i])
-			charge[k] = p.Charge(c.pins[i])
-		}
-		for k, rate := range s.rate(&charge) {
-			out[k] += c.sign * rate
-		}
+		p.Load(x, t)
+		amps += p.Current(c.pins[i])
+		charge += p.Charge(c.pins[i])
 	}
+	c.amps[slot], c.charge[slot] = c.sign*amps, c.sign*charge
 	return nil
+}
+
+func (c *currentTap) read(at *slots, h float64, out *samples) {
+	*out = c.amps.read(at)
+	for k, rate := range c.charge.rate(at, h) {
+		out[k] += rate
+	}
 }
 
 // wattsTap reads the power that a part takes in: the sum over its pins of voltage times current.
 type wattsTap struct {
-	volts  []mna.Unknown
-	amps   []*currentTap
-	buffer [samplesPerStep]float64
+	pins  []mna.Unknown
+	amps  []*currentTap
+	volts []slotted
 }
 
 func (m *model) wattsTap(element string) (tap, error) {
@@ -173,22 +184,24 @@ func (m *model) wattsTap(element string) (tap, error) {
 	e := &m.circuit.Elements[i]
 	w := &wattsTap{}
 	if node, _ := holds(e); node > 0 {
-		w.volts = []mna.Unknown{m.system.Unknown(node)}
-		w.amps = []*currentTap{m.currentTap(-1, m.fed[node]...)}
+		w.add(m.system.Unknown(node), m.currentTap(-1, m.fed[node]...))
 		return w, nil
 	}
 	for pin, node := range e.Nodes {
-		w.volts = append(w.volts, m.system.Unknown(node))
-		w.amps = append(w.amps, m.currentTap(1, pinOfDevice{m.device[i], pin}))
+		w.add(m.system.Unknown(node), m.currentTap(1, pinOfDevice{m.device[i], pin}))
 	}
 	return w, nil
+}
+
+func (w *wattsTap) add(pin mna.Unknown, amps *currentTap) {
+	w.pins, w.amps, w.volts = append(w.pins, pin), append(w.amps, amps), append(w.volts, slotted{})
 }
 
 func (w *wattsTap) cubic() bool { return false }
 
 func (w *wattsTap) rest(x []float64) (float64, error) {
 	sum := 0.0
-	for i, u := range w.volts {
+	for i, u := range w.pins {
 		amps, err := w.amps[i].rest(x)
 		if err != nil {
 			return 0, err
@@ -198,17 +211,25 @@ func (w *wattsTap) rest(x []float64) (float64, error) {
 	return sum, nil
 }
 
-func (w *wattsTap) sample(s *stepSamples, out []float64) error {
-	clear(out)
-	for i, u := range w.volts {
-		if err := w.amps[i].sample(s, w.buffer[:]); err != nil {
+func (w *wattsTap) load(slot int, x []float64, t float64) error {
+	for i, u := range w.pins {
+		w.volts[i][slot] = x[u]
+		if err := w.amps[i].load(slot, x, t); err != nil {
 			return err
-		}
-		for k := range out {
-			out[k] += s.x[k][u] * w.buffer[k]
 		}
 	}
 	return nil
+}
+
+func (w *wattsTap) read(at *slots, h float64, out *samples) {
+	*out = samples{}
+	var amps samples
+	for i := range w.pins {
+		w.amps[i].read(at, h, &amps)
+		for k, slot := range at {
+			out[k] += w.volts[i][slot] * amps[k]
+		}
+	}
 }
 
 // operatingTap reads a device's operating quantity.
@@ -216,6 +237,7 @@ type operatingTap struct {
 	probe *mna.Probe
 	name  string
 	full  string
+	value slotted
 }
 
 func (m *model) operatingTap(q *netlist.Operating) (*operatingTap, error) {
@@ -223,10 +245,11 @@ func (m *model) operatingTap(q *netlist.Operating) (*operatingTap, error) {
 	if !ok || m.device[i] == held {
 		return nil, &InputError{Message: "there is no device " + q.Element}
 	}
-	return &operatingTap{m.system.Probe(m.device[i]), q.Name, q.Element + "." + q.Name}, nil
+	return &operatingTap{probe: m.system.Probe(m.device[i]), name: q.Name, full: q.Element + "." + q.Name}, nil
 }
 
-func (o *operatingTap) read(x []float64, t float64) (mna.Quantity, error) {
+// at reads the quantity at the solution x at t seconds.
+func (o *operatingTap) at(x []float64, t float64) (mna.Quantity, error) {
 	o.probe.Load(x, t)
 	for _, q := range o.probe.Operating() {
 		if q.Name == o.name {
@@ -239,17 +262,14 @@ func (o *operatingTap) read(x []float64, t float64) (mna.Quantity, error) {
 func (o *operatingTap) cubic() bool { return false }
 
 func (o *operatingTap) rest(x []float64) (float64, error) {
-	q, err := o.read(x, 0)
+	q, err := o.at(x, 0)
 	return q.Value, err
 }
 
-func (o *operatingTap) sample(s *stepSamples, out []float64) error {
-	for k := range out {
-		q, err := o.read(s.x[k], s.t[k])
-		if err != nil {
-			return err
-		}
-		out[k] = q.Value
-	}
-	return nil
+func (o *operatingTap) load(slot int, x []float64, t float64) error {
+	q, err := o.at(x, t)
+	o.value[slot] = q.Value
+	return err
 }
+
+func (o *operatingTap) read(at *slots, _ float64, out *samples) { *out = o.value.read(at) }

@@ -49,10 +49,9 @@ func (w *Waveform) histogram(bottom, top float64) [stateBins]float64 {
 
 // eachSample calls f with stateSamples values of each step and the time each stands for.
 func (w *Waveform) eachSample(f func(v, dt float64)) {
-	for i := range w.steps() {
-		c, _, h := w.piece(i)
+	for p := range w.pieces() {
 		for k := range stateSamples {
-			f(c.at((float64(k)+0.5)/stateSamples), h/stateSamples)
+			f(p.c.at((float64(k)+0.5)/stateSamples), p.length()/stateSamples)
 		}
 	}
 }
@@ -79,46 +78,69 @@ func (w *Waveform) Rise() (float64, error) { return w.transition(true) }
 // Fall returns the time in s that the first falling transition takes from 90 % to 10 %.
 func (w *Waveform) Fall() (float64, error) { return w.transition(false) }
 
+// distinctStates returns the levels of the states of a waveform that has two, for what is wanted of it.
+func (w *Waveform) distinctStates(wanted string) (low, high float64, err error) {
+	low, high = w.States()
+	switch {
+	case math.IsNaN(high - low):
+		err = &InputError{Message: "the waveform has no " + wanted + ": it is not a number everywhere"}
+	case !(high > low):
+		err = &InputError{Message: "the waveform has no " + wanted + ": it is constant"}
+	}
+	return low, high, err
+}
+
+// transition returns the time in s that the first complete transition takes between the marks. Its start is the last passage through
+// the first mark before the other one is reached.
 func (w *Waveform) transition(up bool) (float64, error) {
-	low, high := w.States()
-	begin, end := low+lowMark*(high-low), low+highMark*(high-low)
-	name := "rising"
+	name := "falling transition"
+	if up {
+		name = "rising transition"
+	}
+	low, high, err := w.distinctStates(name)
+	if err != nil {
+		return math.NaN(), err
+	}
+	begin, end := passing{level: low + lowMark*(high-low)}, passing{level: low + highMark*(high-low)}
 	if !up {
-		begin, end, name = end, begin, "falling"
+		begin, end = end, begin
 	}
-	if !(high > low) {
-		return math.NaN(), &InputError{Message: "the waveform has no " + name + " transition: it is constant"}
-	}
-	// The start is the last passage through the first mark before the other one is reached.
-	finish := math.NaN()
 	start := math.NaN()
-	w.eachCrossing(end, func(t float64, rising bool) bool {
-		if rising != up {
-			return true
+	for p := range w.pieces() {
+		passages := begin.through(p, up)
+		for _, t := range end.through(p, up) {
+			for _, b := range passages {
+				if b <= t {
+					start = b
+				}
+			}
+			if !math.IsNaN(start) {
+				return t - start, nil
+			}
 		}
-		w.eachCrossing(begin, func(b float64, r bool) bool {
-			if b > t {
-				return false
-			}
-			if r == up {
-				start = b
-			}
-			return true
-		})
-		finish = t
-		return math.IsNaN(start)
-	})
-	if math.IsNaN(start) {
-		return math.NaN(), &InputError{Message: fmt.Sprintf("the waveform has no complete %s transition in the window", name)}
+		if n := len(passages); n > 0 {
+			start = passages[n-1]
+		}
 	}
-	return finish - start, nil
+	return math.NaN(), &InputError{Message: fmt.Sprintf("the waveform has no complete %s in the window", name)}
+}
+
+// through returns the times in s at which a piece passes through the level in one direction.
+func (s *passing) through(p *piece, up bool) (ts []float64) {
+	s.each(p, func(t float64, rising bool) bool {
+		if rising == up {
+			ts = append(ts, t)
+		}
+		return true
+	})
+	return ts
 }
 
 // Overshoot returns how far the waveform goes beyond its states, as a share of the difference between them.
 func (w *Waveform) Overshoot() (float64, error) {
-	low, high := w.States()
-	if !(high > low) {
-		return math.NaN(), &InputError{Message: "the waveform has no overshoot: it is constant"}
+	low, high, err := w.distinctStates("overshoot")
+	if err != nil {
+		return math.NaN(), err
 	}
 	top, _ := w.Peak()
 	bottom, _ := w.Trough()

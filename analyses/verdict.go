@@ -86,12 +86,12 @@ func (e *evaluation) wordVerdict(x *netlist.Expected) verdict {
 
 // waveformVerdict finds the worst point of a waveform: one of its extremes.
 func (e *evaluation) waveformVerdict(x *netlist.Expected, v *verdict) error {
-	w, err := e.waveform(x.Quantity)
+	extremes, err := e.extremes(x.Quantity)
 	if err != nil {
 		return err
 	}
-	high, highAt := w.Peak()
-	low, lowAt := w.Trough()
+	high, highAt := extremes.peak()
+	low, lowAt := extremes.trough()
 	var at float64
 	v.value, at = high, highAt
 	if m := margin(low, &x.Limit, x.Limit.Ratio); !(m >= margin(high, &x.Limit, x.Limit.Ratio)) {
