@@ -43,7 +43,7 @@ func (r *recording) cut(step *mna.Step, from float64) error {
 			return err
 		}
 	}
-	r.read(&at, h, r.whole)
+	r.read(r.list, at, h, r.whole)
 	return r.halve(step, from, step.T1, at, r.whole, 0)
 }
 
@@ -63,12 +63,14 @@ func (r *recording) halve(step *mna.Step, from, until float64, at slots, values 
 	}
 	left, right := slots{at[0], first, at[1], first + 1}, slots{first + 1, at[2], first + 2, at[3]}
 	halves := &r.halves[depth]
-	r.read(&left, middle-from, halves.left)
-	r.read(&right, until-middle, halves.right)
+	r.read(r.curved, left, middle-from, halves.left)
+	r.read(r.curved, right, until-middle, halves.right)
 	if r.good(values, halves.left, halves.right) {
 		r.pass(from, until, values)
 		return nil
 	}
+	r.read(r.straight, left, middle-from, halves.left)
+	r.read(r.straight, right, until-middle, halves.right)
 	if err := r.halve(step, from, middle, left, halves.left, depth+1); err != nil {
 		return err
 	}

@@ -3,7 +3,6 @@ package analyses
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"poise/mna"
 	"poise/netlist"
@@ -18,6 +17,9 @@ type recording struct {
 	accuracy float64 // relative to the swing of a column
 	columns  map[string]*column
 	list     []*column // those of columns, in the order in which they were asked for
+	// A step's own cubic is exact for some columns; because of the others it may have to be halved.
+	straight, curved []*column
+
 	words    map[string]*wordColumn
 	streams  map[string]*stream
 	order    []*stream // those of streams, in the order in which they were asked for
@@ -145,8 +147,15 @@ func (r *recording) begin(start float64) {
 	if r.keeps {
 		r.knots = append(r.knots, start)
 	}
+	for _, c := range r.list {
+		if c.tap.cubic() {
+			r.straight = append(r.straight, c)
+		} else {
+			r.curved = append(r.curved, c)
+		}
+	}
 	halvings := pieceHalvings
-	if !slices.ContainsFunc(r.list, func(c *column) bool { return !c.tap.cubic() }) {
+	if len(r.curved) == 0 {
 		halvings = 0
 	}
 	r.cutter = newCutter(len(r.list), r.model.system.Size(), halvings)
@@ -176,12 +185,13 @@ func (r *recording) look(step *mna.Step, t float64, slot int) error {
 	return nil
 }
 
-// read fills values with the samples of all columns over h seconds, out of four slots of their taps.
-func (r *recording) read(at *slots, h float64, values []samples) {
-	for i, c := range r.list {
-		c.tap.read(at, h, &values[i])
-		for _, v := range values[i] {
-			c.low, c.high = math.Min(c.low, v), math.Max(c.high, v)
+// read fills values with the samples of columns over h seconds, out of four slots of their taps.
+func (r *recording) read(columns []*column, at slots, h float64, values []samples) {
+	for _, c := range columns {
+		y := &values[c.index]
+		c.tap.read(at, h, y)
+		for _, v := range y {
+			c.low, c.high = min(c.low, v), max(c.high, v)
 		}
 	}
 }
@@ -201,11 +211,9 @@ func allowance(accuracy, low, high float64) float64 {
 
 // good reports whether the cubics of a piece agree with the samples of its halves.
 func (r *recording) good(values, left, right []samples) bool {
-	for i, c := range r.list {
-		if c.tap.cubic() {
-			continue
-		}
+	for _, c := range r.curved {
 		allowed := allowance(r.accuracy, c.low, c.high)
+		i := c.index
 		whole := newCubic(values[i][:])
 		for k := range samplesPerStep {
 			u := float64(k) / (2 * (samplesPerStep - 1))

@@ -16,7 +16,7 @@ type tap interface {
 	// load reads a point, the solution x at t seconds, into a slot.
 	load(slot int, x []float64, t float64) error
 	// read fills out with the quantity at four equally spaced points over h seconds, which have been loaded.
-	read(at *slots, h float64, out *samples)
+	read(at slots, h float64, out *samples)
 	// cubic reports whether the quantity is a cubic within a step, as the integrator's own unknowns are.
 	cubic() bool
 }
@@ -24,7 +24,7 @@ type tap interface {
 // slotted holds a number for every slot.
 type slotted [allSlots]float64
 
-func (s *slotted) read(at *slots) (y samples) {
+func (s *slotted) read(at slots) (y samples) {
 	for k, slot := range at {
 		y[k] = s[slot]
 	}
@@ -32,7 +32,7 @@ func (s *slotted) read(at *slots) (y samples) {
 }
 
 // rate returns the slope of the cubic through four slots over h seconds.
-func (s *slotted) rate(at *slots, h float64) (rate samples) {
+func (s *slotted) rate(at slots, h float64) (rate samples) {
 	y := s.read(at)
 	c := newCubic(y[:])
 	for k := range rate {
@@ -85,7 +85,7 @@ func (v *voltsTap) load(slot int, x []float64, _ float64) error {
 	return nil
 }
 
-func (v *voltsTap) read(at *slots, _ float64, out *samples) { *out = v.volts.read(at) }
+func (v *voltsTap) read(at slots, _ float64, out *samples) { *out = v.volts.read(at) }
 
 // currentTap reads a sum of pin currents.
 type currentTap struct {
@@ -162,7 +162,7 @@ func (c *currentTap) load(slot int, x []float64, t float64) error {
 	return nil
 }
 
-func (c *currentTap) read(at *slots, h float64, out *samples) {
+func (c *currentTap) read(at slots, h float64, out *samples) {
 	*out = c.amps.read(at)
 	for k, rate := range c.charge.rate(at, h) {
 		out[k] += rate
@@ -221,7 +221,7 @@ func (w *wattsTap) load(slot int, x []float64, t float64) error {
 	return nil
 }
 
-func (w *wattsTap) read(at *slots, h float64, out *samples) {
+func (w *wattsTap) read(at slots, h float64, out *samples) {
 	*out = samples{}
 	var amps samples
 	for i := range w.pins {
@@ -272,4 +272,4 @@ func (o *operatingTap) load(slot int, x []float64, t float64) error {
 	return err
 }
 
-func (o *operatingTap) read(at *slots, _ float64, out *samples) { *out = o.value.read(at) }
+func (o *operatingTap) read(at slots, _ float64, out *samples) { *out = o.value.read(at) }
