@@ -27,7 +27,12 @@ func (p *piece) length() float64 { return p.t1 - p.t0 }
 func (p *piece) at(t float64) float64 { return p.c.at((t - p.t0) / p.length()) }
 
 // time returns the time in s at u in 0..1.
-func (p *piece) time(u float64) float64 { return p.t0 + u*p.length() }
+func (p *piece) time(u float64) float64 {
+	if u == 1 {
+		return p.t1
+	}
+	return p.t0 + u*p.length()
+}
 
 // isNaN reports whether the piece is not a number somewhere.
 func (p *piece) isNaN() bool { return math.IsNaN(p.y[0] + p.y[1] + p.y[2] + p.y[3]) }
