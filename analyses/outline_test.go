@@ -37,14 +37,17 @@ func TestOutlineStaysWithinTheAccuracy(t *testing.T) {
 		require.Len(t, o.slack, o.wave.steps())
 		from, until := o.wave.Window()
 		assert.Equal(t, [2]float64{0, 1}, [2]float64{from, until})
-		// One step holds the jump.
-		for x := range w.pieces() {
-			for k, v := range x.y {
-				at := x.time(float64(k) / 3)
-				got, err := o.wave.At(at)
-				require.NoError(t, err)
-				if !(math.Abs(got-v) <= allowed) && !(x.t0 <= jump && x.t1 >= jump) {
-					t.Fatalf("off by %g at %g s, allowed %g", math.Abs(got-v), at, allowed)
+		i := 0
+		for p := range w.pieces() {
+			for p.t1 > o.wave.knots[i+1] {
+				i++
+			}
+			require.LessOrEqual(t, o.slack[i], allowed)
+			var merged piece
+			o.wave.set(&merged, i)
+			for k, v := range p.y {
+				if off := math.Abs(merged.at(p.time(float64(k)/3)) - v); !(off <= o.slack[i]+1e-12) {
+					t.Fatalf("off by %g in %g..%g s, said to be %g", off, merged.t0, merged.t1, o.slack[i])
 				}
 			}
 		}
@@ -99,4 +102,22 @@ func TestOutlineOfAConstant(t *testing.T) {
 	w.values[777] = math.NaN()
 	o = outlined(w, 1e-4)
 	assert.True(t, math.IsNaN(o.wave.Mean()), "what is not a number is not merged away")
+}
+
+// TestSlackAddsUp: what a piece is off by already counts when it is merged again.
+func TestSlackAddsUp(t *testing.T) {
+	const allowed = 1e-3
+	bend := waveformOf(func(x float64) float64 { return 1e-4 * math.Pow(x, 4) }, 0, 2, 2)
+	for _, before := range []samples{{0, 0}, {0.9e-3, 0}, {0, 0.9e-3}, {0.999999e-3, 0.999999e-3}} {
+		o := accumulated(bend, newOutline(1e-4))
+		copy(o.slack, before[:2])
+		most := max(before[0], before[1])
+		if !o.join(0, allowed) {
+			assert.Greater(t, most, 0.99e-3)
+			assert.Equal(t, before[:2], o.slack)
+			continue
+		}
+		assert.Less(t, most, 0.99e-3)
+		assert.Greater(t, o.slack[0], most+1e-6)
+	}
 }

@@ -40,14 +40,11 @@ func (p *piece) isNaN() bool { return math.IsNaN(p.y[0] + p.y[1] + p.y[2] + p.y[
 // cubic is c[0] + c[1] u + c[2] u^2 + c[3] u^3 on u in 0..1.
 type cubic [4]float64
 
-// newCubic interpolates y at u = 0, 1/3, 2/3, 1 (Lagrange).
+// newCubic interpolates y at u = 0, 1/3, 2/3, 1 (Lagrange). It takes differences first, so that a constant stays one and a large mean does not
+// blur what is small beside it.
 func newCubic(y []float64) cubic {
-	return cubic{
-		y[0],
-		-5.5*y[0] + 9*y[1] - 4.5*y[2] + y[3],
-		9*y[0] - 22.5*y[1] + 18*y[2] - 4.5*y[3],
-		-4.5*y[0] + 13.5*y[1] - 13.5*y[2] + 4.5*y[3],
-	}
+	d1, d2, d3 := y[1]-y[0], y[2]-y[0], y[3]-y[0]
+	return cubic{y[0], 9*d1 - 4.5*d2 + d3, -22.5*d1 + 18*d2 - 4.5*d3, 13.5*d1 - 13.5*d2 + 4.5*d3}
 }
 
 func (c *cubic) at(u float64) float64 { return c[0] + u*(c[1]+u*(c[2]+u*c[3])) }

@@ -2,11 +2,14 @@ package analyses
 
 import (
 	"errors"
+	"math"
 	"os"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/require"
 
+	"poise/devices"
 	"poise/mna"
 	"poise/netlist"
 )
@@ -55,6 +58,82 @@ func TestALookAtAStepAllocatesNothing(t *testing.T) {
 			}), measured)
 		})
 	}
+}
+
+// TestStepsAreCutFinelyEnough: with steps of a tenth of a period, what is no cubic is cut until it is one.
+func TestStepsAreCutFinelyEnough(t *testing.T) {
+	const frequency, amplitude, ohms = 5e3, 1.0, 1e3
+	s := filtered(t, 100)
+	s.Run.Step, s.Run.Until = 0.1/frequency, 10/frequency
+	v, err := Measure(t.Context(), s, "volts(in)", "volts(in, out)", "amps(R1)", "watts(R1)", "volts(out)")
+	require.NoError(t, err)
+	in := v[0].Wave
+	allowed := allowance(s.Circuit.Accuracy, -amplitude, amplitude)
+	looked := 0
+	for p := range in.pieces() {
+		for k := range 9 {
+			at := p.time(float64(k) / 8)
+			var values [5]float64
+			for i := range v {
+				values[i], err = v[i].Wave.At(at)
+				require.NoError(t, err)
+			}
+			near(t, amplitude*math.Sin(2*math.Pi*frequency*at), values[0], allowed, at)
+			near(t, values[1]/ohms, values[2], allowed/ohms, at)
+			near(t, values[1]*values[1]/ohms, values[3], 2*allowed/ohms, at)
+			near(t, values[0]-values[1], values[4], 2*allowed, at)
+			looked++
+		}
+	}
+	require.Less(t, looked, 9*50*pieceHalvings*10)
+}
+
+// jump is a signal that has two values.
+type jump struct{ from, to, at float64 }
+
+func (j jump) At(t float64) float64 {
+	if t < j.at {
+		return j.from
+	}
+	return j.to
+}
+
+func (j jump) Corner(t float64) float64 {
+	if t < j.at {
+		return j.at
+	}
+	return math.Inf(1)
+}
+
+func (j jump) Scale(float64) float64 { return math.Inf(1) }
+
+// TestADeviceIsReadBeforeItsJump: the step that ends at a jump sees nothing of it, in the current of the device that jumps either.
+func TestADeviceIsReadBeforeItsJump(t *testing.T) {
+	s := filtered(t, 100)
+	i := slices.IndexFunc(s.Circuit.Elements, func(e netlist.Element) bool { return e.Name == "C1" })
+	s.Circuit.Elements[i].Device = devices.NewCurrentSource(jump{1e-3, -2e-3, 37e-6})
+	v, err := Measure(t.Context(), s, "amps(C1)", "peak(amps(C1))", "trough(amps(C1))", "crosses(amps(C1), 0A, 1)", "slew(amps(C1))")
+	require.NoError(t, err)
+	require.Equal(t, []float64{1e-3, -2e-3, 37e-6, 0}, []float64{v[1].Float(), v[2].Float(), v[3].Float(), v[4].Float()})
+	for p := range v[0].Wave.pieces() {
+		want := 1e-3
+		if p.t0 >= 37e-6 {
+			want = -2e-3
+		}
+		require.Equal(t, samples{want, want, want, want}, p.y)
+	}
+}
+
+// TestAKinkIsHalvedAFewTimesOnly: of a quantity that no cubic fits, a step is cut into 64 pieces at most.
+func TestAKinkIsHalvedAFewTimesOnly(t *testing.T) {
+	atAStep(t, "hum", []string{"amps(Q1.c)"}, nil, func(r *recording, step *mna.Step) {
+		r.accuracy = 0
+		before := len(r.knots)
+		require.NoError(t, r.add(step))
+		require.Equal(t, 1<<pieceHalvings, len(r.knots)-before)
+		require.True(t, slices.IsSorted(r.knots[before-1:]))
+		require.Equal(t, step.T1, r.knots[len(r.knots)-1])
+	})
 }
 
 // BenchmarkRecording looks at one step of a run again and again: for a waveform that is kept, for its extremes, for three reducers.

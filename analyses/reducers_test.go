@@ -44,10 +44,12 @@ func drawWaveform(t *rapid.T) *Waveform {
 			last = value.Draw(t, "after")
 		}
 		y := samples{last, last, last, last}
-		switch end := value.Draw(t, "end"); rapid.IntRange(0, 3).Draw(t, "form") {
+		switch end := value.Draw(t, "end"); rapid.IntRange(0, 4).Draw(t, "form") {
 		case 0:
 		case 1:
 			y = samples{last, last + (end-last)/3, last + 2*(end-last)/3, end}
+		case 2: // steepest in the middle: 3 u^2 - 2 u^3
+			y = samples{last, last + (end-last)*7/27, last + (end-last)*20/27, end}
 		default:
 			y = samples{last, value.Draw(t, "y1"), value.Draw(t, "y2"), end}
 		}
@@ -280,6 +282,14 @@ func TestTimeAndScale(t *testing.T) {
 		}
 		near(t, 0.5*math.Hypot(was["tone"], was["quadrature"]), math.Hypot(is["tone"], is["quadrature"]), toneQuadrature)
 	})
+}
+
+// TestEndsOfAPieceAreExact: start and length do not add up to the end for every pair of numbers.
+func TestEndsOfAPieceAreExact(t *testing.T) {
+	for i := 1; i < 100; i++ {
+		p := piece{t0: -1 / float64(i), t1: 0.1 * float64(i)}
+		require.Equal(t, [2]float64{p.t0, p.t1}, [2]float64{p.time(0), p.time(1)})
+	}
 }
 
 func TestHullHoldsTheCubic(t *testing.T) {

@@ -162,7 +162,7 @@ func TestStreamsAgreeWithWaveforms(t *testing.T) {
 		"volts(out)", "volts(in, out)", "1kohm*amps(R1)", "volts(out) * dm_gain at 1kHz", "2*abs(volts(out) - volts(in))", "min(volts(m), volts(in), 0.1V)", "1kohm*watts(L1)/1V",
 		"volts(out) - quiescent(volts(out))",
 	} {
-		kept, measured := quantities(t, s, x), quantities(t, s, everyReducer(x)...)
+		kept, measured := quantities(t, s, x), quantities(t, s, append(everyReducer(x), "value("+x+", at: 1.1ms)", "settles("+x+", within: 5mV)", "crosses("+x+", 0.2V, 1)")...)
 		e, err := newEvaluation(t.Context(), s, nil)
 		require.NoError(t, err)
 		require.NoError(t, e.run(kept, append(measured, kept...)))
