@@ -28,7 +28,7 @@ func TestOutlineStaysWithinTheAccuracy(t *testing.T) {
 			}
 			return v
 		}
-		w := waveformOf(f, 0, 1, 20_000)
+		w := waveformOf(f, 0, 1, 5_000)
 		o := outlined(w, accuracy)
 		peak, _ := w.Peak()
 		trough, _ := w.Trough()

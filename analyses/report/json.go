@@ -10,8 +10,7 @@ import (
 
 // Meta is what a JSON report says about itself.
 type Meta struct {
-	Version string            `json:"version"`
-	Options map[string]string `json:"options,omitempty"`
+	Version string // of the program that made it
 }
 
 // number is a float64 that is null where JSON has no word for it.
