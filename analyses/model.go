@@ -5,6 +5,10 @@
 // one set-up; [Bias], [Curves] and [Waveforms] return what the commands of the same names print. All results are
 // plain data in SI units. Every analysis honours its context and is
 // safe to run from several goroutines at once.
+//
+// A run keeps only what is asked for as a waveform. Reducers and comparisons are computed as the steps are accepted, in room that does not grow with the
+// length of the run; but rise, fall, overshoot and settles keep an outline of their waveform, exact up to 131072 steps and within a tenth of the accuracy
+// beyond, and an expression that has a reducer in it is kept until that is known.
 package analyses
 
 import (

@@ -9,9 +9,9 @@ import (
 )
 
 var (
-	nan  = math.NaN()
-	inf  = math.Inf(1)
-	halt = errors.New("the integration stopped at 1 ms\nat the node out")
+	nan     = math.NaN()
+	inf     = math.Inf(1)
+	errHalt = errors.New("the integration stopped at 1 ms\nat the node out")
 )
 
 // everyVerdict is a report with every kind of outcome.
@@ -32,15 +32,15 @@ func everyVerdict() *analyses.Report {
 				At: []analyses.Coordinate{{Name: "frequency", Value: 50, Unit: "Hz"}}},
 			{Line: 43, Text: "Q1.region = forward", Status: analyses.Fail, Value: nan, Low: nan, High: nan, Margin: nan, Word: "saturated", Want: "forward",
 				At: []analyses.Coordinate{{Name: "time", Value: 2e-3, Unit: "s"}}},
-			{Line: 44, Text: "crosses(volts(out), 5V, 2) <= 1s", Status: analyses.Error, Err: halt, Value: nan, Low: -inf, High: 1, Margin: nan, Unit: "s"},
+			{Line: 44, Text: "crosses(volts(out), 5V, 2) <= 1s", Status: analyses.Error, Err: errHalt, Value: nan, Low: -inf, High: 1, Margin: nan, Unit: "s"},
 			{Line: 45, Text: "rms(volts(out)) >= 1mV", Status: analyses.Pass, Value: 2e-3, Low: 1e-3, High: inf, Margin: 1e-3, Unit: "V"},
 			{Line: 46, Text: "pp(volts(out)) < 1V", Status: analyses.Skipped, Value: nan, Low: -inf, High: 1, Margin: nan, Unit: "V"},
 		},
 	}
 	burst := analyses.BenchResult{
-		Name: "burst", Line: 50, Status: analyses.Error, Err: halt, Points: 1,
+		Name: "burst", Line: 50, Status: analyses.Error, Err: errHalt, Points: 1,
 		Expectations: []analyses.ExpectationResult{
-			{Line: 51, Text: "peak(volts(out)) <= 9V", Status: analyses.Error, Err: halt, Value: nan, Low: nan, High: nan, Margin: nan, Unit: "V"},
+			{Line: 51, Text: "peak(volts(out)) <= 9V", Status: analyses.Error, Err: errHalt, Value: nan, Low: nan, High: nan, Margin: nan, Unit: "V"},
 		},
 	}
 	return &analyses.Report{
