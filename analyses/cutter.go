@@ -16,15 +16,14 @@ type slots [samplesPerStep]int
 
 // cutter cuts a step into pieces on which all columns are cubics. Every point of the step is looked at once.
 type cutter struct {
-	x        []float64 // the solution at the point looked at
-	halvings int       // at most
-	whole    []samples
-	halves   [pieceHalvings]struct{ left, right []samples }
+	x      []float64 // the solution at the point looked at
+	whole  []samples
+	halves [pieceHalvings]struct{ left, right []samples }
 }
 
-func newCutter(columns, unknowns, halvings int) cutter {
-	c := cutter{x: make([]float64, unknowns), halvings: halvings, whole: make([]samples, columns)}
-	for d := range halvings {
+func newCutter(columns, unknowns int) cutter {
+	c := cutter{x: make([]float64, unknowns), whole: make([]samples, columns)}
+	for d := range c.halves {
 		c.halves[d].left, c.halves[d].right = make([]samples, columns), make([]samples, columns)
 	}
 	return c
@@ -43,7 +42,7 @@ func (r *recording) cut(step *mna.Step, from float64) error {
 			return err
 		}
 	}
-	r.read(r.list, at, h, r.whole)
+	r.read(at, h, r.whole)
 	return r.halve(step, from, step.T1, at, r.whole, 0)
 }
 
@@ -51,7 +50,7 @@ func (r *recording) cut(step *mna.Step, from float64) error {
 func (r *recording) halve(step *mna.Step, from, until float64, at slots, values []samples, depth int) error {
 	h := until - from
 	middle := from + h/2
-	if depth == r.halvings || !(middle > from && middle < until) {
+	if depth == pieceHalvings || !(middle > from && middle < until) {
 		r.pass(from, until, values)
 		return nil
 	}
@@ -63,14 +62,12 @@ func (r *recording) halve(step *mna.Step, from, until float64, at slots, values 
 	}
 	left, right := slots{at[0], first, at[1], first + 1}, slots{first + 1, at[2], first + 2, at[3]}
 	halves := &r.halves[depth]
-	r.read(r.curved, left, middle-from, halves.left)
-	r.read(r.curved, right, until-middle, halves.right)
+	r.read(left, middle-from, halves.left)
+	r.read(right, until-middle, halves.right)
 	if r.good(values, halves.left, halves.right) {
 		r.pass(from, until, values)
 		return nil
 	}
-	r.read(r.straight, left, middle-from, halves.left)
-	r.read(r.straight, right, until-middle, halves.right)
 	if err := r.halve(step, from, middle, left, halves.left, depth+1); err != nil {
 		return err
 	}

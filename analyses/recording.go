@@ -17,9 +17,6 @@ type recording struct {
 	accuracy float64 // relative to the swing of a column
 	columns  map[string]*column
 	list     []*column // those of columns, in the order in which they were asked for
-	// A step's own cubic is exact for some columns; because of the others it may have to be halved.
-	straight, curved []*column
-
 	words    map[string]*wordColumn
 	streams  map[string]*stream
 	order    []*stream // those of streams, in the order in which they were asked for
@@ -37,6 +34,7 @@ type column struct {
 	kept      bool
 	values    []float64 // four for every piece, if it is kept
 	low, high float64   // extremes so far
+	noise     float64   // rounding of what was read last
 }
 
 // wordColumn keeps the words that a quantity takes and when it first takes each.
@@ -147,18 +145,7 @@ func (r *recording) begin(start float64) {
 	if r.keeps {
 		r.knots = append(r.knots, start)
 	}
-	for _, c := range r.list {
-		if c.tap.cubic() {
-			r.straight = append(r.straight, c)
-		} else {
-			r.curved = append(r.curved, c)
-		}
-	}
-	halvings := pieceHalvings
-	if len(r.curved) == 0 {
-		halvings = 0
-	}
-	r.cutter = newCutter(len(r.list), r.model.system.Size(), halvings)
+	r.cutter = newCutter(len(r.list), r.model.system.Size())
 }
 
 // look reads all columns at a time t in s of a step into a slot of their taps.
@@ -185,12 +172,11 @@ func (r *recording) look(step *mna.Step, t float64, slot int) error {
 	return nil
 }
 
-// read fills values with the samples of columns over h seconds, out of four slots of their taps.
-func (r *recording) read(columns []*column, at slots, h float64, values []samples) {
-	for _, c := range columns {
-		y := &values[c.index]
-		c.tap.read(at, h, y)
-		for _, v := range y {
+// read fills values with the samples of all columns over h seconds, out of four slots of their taps.
+func (r *recording) read(at slots, h float64, values []samples) {
+	for i, c := range r.list {
+		c.noise = c.tap.read(at, h, &values[i])
+		for _, v := range values[i] {
 			c.low, c.high = min(c.low, v), max(c.high, v)
 		}
 	}
@@ -198,7 +184,7 @@ func (r *recording) read(columns []*column, at slots, h float64, values []sample
 
 const (
 	// pieceShare is the share of the accuracy that the cubic of a piece may be off a quantity that is no cubic itself: a stimulus, a
-	// junction's current.
+	// junction's current, an unknown in a step of high order.
 	pieceShare = 0.1
 	// valueShare is the share of a quantity's size below which its swing is not looked at: rounding.
 	valueShare = 1e-6
@@ -211,9 +197,8 @@ func allowance(accuracy, low, high float64) float64 {
 
 // good reports whether the cubics of a piece agree with the samples of its halves.
 func (r *recording) good(values, left, right []samples) bool {
-	for _, c := range r.curved {
-		allowed := allowance(r.accuracy, c.low, c.high)
-		i := c.index
+	for i, c := range r.list {
+		allowed := allowance(r.accuracy, c.low, c.high) + c.noise
 		whole := newCubic(values[i][:])
 		for k := range samplesPerStep {
 			u := float64(k) / (2 * (samplesPerStep - 1))

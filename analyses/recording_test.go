@@ -6,6 +6,7 @@ import (
 	"os"
 	"slices"
 	"testing"
+	"testing/fstest"
 
 	"github.com/stretchr/testify/require"
 
@@ -134,6 +135,38 @@ func TestAKinkIsHalvedAFewTimesOnly(t *testing.T) {
 		require.True(t, slices.IsSorted(r.knots[before-1:]))
 		require.Equal(t, step.T1, r.knots[len(r.knots)-1])
 	})
+}
+
+// TestRoundingIsNotCut: the difference of two equal voltages, or the current of a capacitor at rest, is rounding, which no cubic fits.
+func TestRoundingIsNotCut(t *testing.T) {
+	d, err := netlist.Load(fstest.MapFS{"x.poise": {Data: []byte(`design balanced "Two dividers of one ratio"
+input source = (in)
+output load = (a, b)
+in -- R1 1kohm -- a -- R2 2kohm -- gnd
+in -- R3 3kohm -- b -- R4 6kohm -- gnd
+a -- C1 3nF -- gnd
+b -- C2 1nF -- gnd
+in -- R5 7kohm -- c -- C3 10uF -- gnd
+bench sine {
+  drive source signal = sine(1V, 5kHz) + 2V
+  run 1ms
+}
+bench still {
+  drive source signal = 2V
+  run 1ms
+}
+`)}}, "x.poise")
+	require.NoError(t, err)
+	for _, c := range []struct{ bench, rounding, smooth string }{{"sine", "volts(a, b)", "volts(a)"}, {"still", "amps(C3)", "volts(c)"}, {"still", "watts(C3)", "volts(c)"}} {
+		s, err := d.Bench(c.bench).Setup(nil)
+		require.NoError(t, err)
+		pieces := func(text string) int {
+			v, err := Measure(t.Context(), s, text)
+			require.NoError(t, err)
+			return v[0].Wave.steps()
+		}
+		require.LessOrEqual(t, pieces(c.rounding), 2*pieces(c.smooth), c.rounding)
+	}
 }
 
 // BenchmarkRecording looks at one step of a run again and again: for a waveform that is kept, for its extremes, for three reducers.

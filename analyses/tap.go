@@ -2,6 +2,7 @@ package analyses
 
 import (
 	"fmt"
+	"math"
 	"slices"
 
 	"poise/mna"
@@ -15,11 +16,13 @@ type tap interface {
 	rest(x []float64) (float64, error)
 	// load reads a point, the solution x at t seconds, into a slot.
 	load(slot int, x []float64, t float64) error
-	// read fills out with the quantity at four equally spaced points over h seconds, which have been loaded.
-	read(at slots, h float64, out *samples)
-	// cubic reports whether the quantity is a cubic within a step, as the integrator's own unknowns are.
-	cubic() bool
+	// read fills out with the quantity at four equally spaced points over h seconds, which have been loaded. It returns how
+	// far rounding may put them off.
+	read(at slots, h float64, out *samples) (noise float64)
 }
+
+// noiseShare is the rounding of a quantity beside the terms that it is the sum of: a few operations on each.
+const noiseShare = 16 * 0x1p-52
 
 // slotted holds a number for every slot.
 type slotted [allSlots]float64
@@ -29,6 +32,11 @@ func (s *slotted) read(at slots) (y samples) {
 		y[k] = s[slot]
 	}
 	return y
+}
+
+// largest returns the largest magnitude in four slots.
+func (s *slotted) largest(at slots) float64 {
+	return max(math.Abs(s[at[0]]), math.Abs(s[at[1]]), math.Abs(s[at[2]]), math.Abs(s[at[3]]))
 }
 
 // rate returns the slope of the cubic through four slots over h seconds.
@@ -59,8 +67,8 @@ func (m *model) tapOf(q netlist.Quantity) (tap, error) {
 // voltsTap reads a voltage.
 type voltsTap struct {
 	plus, minus mna.Unknown
-	free        bool // neither node is held by a signal
 	volts       slotted
+	gross       slotted // of both nodes
 }
 
 func (m *model) voltsTap(plus, minus string) (tap, error) {
@@ -72,20 +80,21 @@ func (m *model) voltsTap(plus, minus string) (tap, error) {
 	if err != nil {
 		return nil, err
 	}
-	free := func(u mna.Unknown) bool { return u == mna.Ground || int(u) > m.system.Held() }
-	return &voltsTap{plus: p, minus: n, free: free(p) && free(n)}, nil
+	return &voltsTap{plus: p, minus: n}, nil
 }
 
 func (v *voltsTap) rest(x []float64) (float64, error) { return x[v.plus] - x[v.minus], nil }
 
-func (v *voltsTap) cubic() bool { return v.free }
-
 func (v *voltsTap) load(slot int, x []float64, _ float64) error {
 	v.volts[slot] = x[v.plus] - x[v.minus]
+	v.gross[slot] = math.Abs(x[v.plus]) + math.Abs(x[v.minus])
 	return nil
 }
 
-func (v *voltsTap) read(at slots, _ float64, out *samples) { *out = v.volts.read(at) }
+func (v *voltsTap) read(at slots, _ float64, out *samples) float64 {
+	*out = v.volts.read(at)
+	return noiseShare * v.gross.largest(at)
+}
 
 // currentTap reads a sum of pin currents.
 type currentTap struct {
@@ -94,6 +103,8 @@ type currentTap struct {
 	pins   []int
 	amps   slotted // the resistive part
 	charge slotted // C, whose rate is the rest
+	// Of the magnitudes of what is added up.
+	grossAmps, grossCharge slotted
 }
 
 func (m *model) currentTap(sign float64, pins ...pinOfDevice) *currentTap {
@@ -149,24 +160,25 @@ func (c *currentTap) rest(x []float64) (float64, error) {
 	return c.sign * sum, nil
 }
 
-func (c *currentTap) cubic() bool { return false }
-
 func (c *currentTap) load(slot int, x []float64, t float64) error {
-	amps, charge := 0.0, 0.0
+	amps, charge, grossAmps, grossCharge := 0.0, 0.0, 0.0, 0.0
 	for i, p := range c.probes {
 		p.Load(x, t)
-		amps += p.Current(c.pins[i])
-		charge += p.Charge(c.pins[i])
+		a, q := p.Current(c.pins[i]), p.Charge(c.pins[i])
+		amps, grossAmps = amps+a, grossAmps+math.Abs(a)
+		charge, grossCharge = charge+q, grossCharge+math.Abs(q)
 	}
 	c.amps[slot], c.charge[slot] = c.sign*amps, c.sign*charge
+	c.grossAmps[slot], c.grossCharge[slot] = grossAmps, grossCharge
 	return nil
 }
 
-func (c *currentTap) read(at slots, h float64, out *samples) {
+func (c *currentTap) read(at slots, h float64, out *samples) float64 {
 	*out = c.amps.read(at)
 	for k, rate := range c.charge.rate(at, h) {
 		out[k] += rate
 	}
+	return noiseShare * (c.grossAmps.largest(at) + c.grossCharge.largest(at)/h)
 }
 
 // wattsTap reads the power that a part takes in: the sum over its pins of voltage times current.
@@ -197,8 +209,6 @@ func (w *wattsTap) add(pin mna.Unknown, amps *currentTap) {
 	w.pins, w.amps, w.volts = append(w.pins, pin), append(w.amps, amps), append(w.volts, slotted{})
 }
 
-func (w *wattsTap) cubic() bool { return false }
-
 func (w *wattsTap) rest(x []float64) (float64, error) {
 	sum := 0.0
 	for i, u := range w.pins {
@@ -221,15 +231,18 @@ func (w *wattsTap) load(slot int, x []float64, t float64) error {
 	return nil
 }
 
-func (w *wattsTap) read(at slots, h float64, out *samples) {
+func (w *wattsTap) read(at slots, h float64, out *samples) float64 {
 	*out = samples{}
 	var amps samples
+	noise := 0.0
 	for i := range w.pins {
-		w.amps[i].read(at, h, &amps)
+		noise += w.volts[i].largest(at) * w.amps[i].read(at, h, &amps)
 		for k, slot := range at {
 			out[k] += w.volts[i][slot] * amps[k]
 		}
+		noise += noiseShare * w.volts[i].largest(at) * max(math.Abs(amps[0]), math.Abs(amps[1]), math.Abs(amps[2]), math.Abs(amps[3]))
 	}
+	return noise
 }
 
 // operatingTap reads a device's operating quantity.
@@ -259,8 +272,6 @@ func (o *operatingTap) at(x []float64, t float64) (mna.Quantity, error) {
 	return mna.Quantity{}, &InputError{Message: "there is no operating quantity " + o.full}
 }
 
-func (o *operatingTap) cubic() bool { return false }
-
 func (o *operatingTap) rest(x []float64) (float64, error) {
 	q, err := o.at(x, 0)
 	return q.Value, err
@@ -272,4 +283,7 @@ func (o *operatingTap) load(slot int, x []float64, t float64) error {
 	return err
 }
 
-func (o *operatingTap) read(at slots, _ float64, out *samples) { *out = o.value.read(at) }
+func (o *operatingTap) read(at slots, _ float64, out *samples) float64 {
+	*out = o.value.read(at)
+	return noiseShare * o.value.largest(at)
+}
