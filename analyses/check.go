@@ -181,7 +181,7 @@ func (c *checker) solve(ctx context.Context, t *task, bench *netlist.Bench) ([]v
 	}
 	e.progress = c.watch(c.jobs[t.job].File, bench.Name)
 	if setup.Run != nil {
-		if err := e.run(c.kept(setup), measured(setup)); err != nil {
+		if err := e.run(c.kept(setup), expectedQuantities(setup)); err != nil {
 			return nil, nil, err
 		}
 	} else if _, err := e.quiescent(); err != nil {
@@ -212,8 +212,8 @@ func (c *checker) kept(setup *netlist.Setup) []netlist.Quantity {
 	return qs
 }
 
-// measured lists what the expectations compare.
-func measured(setup *netlist.Setup) []netlist.Quantity {
+// expectedQuantities lists what the expectations compare.
+func expectedQuantities(setup *netlist.Setup) []netlist.Quantity {
 	var qs []netlist.Quantity
 	for _, x := range setup.Expected {
 		qs = append(qs, x.Quantity)

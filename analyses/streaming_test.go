@@ -214,7 +214,7 @@ func TestWhatCannotBeComputedIsAnErrorOfItsOwn(t *testing.T) {
 	}
 	e, err := newEvaluation(t.Context(), s, nil)
 	require.NoError(t, err)
-	require.NoError(t, e.run(nil, measured(s)))
+	require.NoError(t, e.run(nil, expectedQuantities(s)))
 	for i, want := range []string{
 		"the metric nonesuch cannot be computed", "the metric nonesuch cannot be computed", "the operation nonesuch cannot be computed",
 		"the reducer nonesuch cannot be computed", "the result is not a number", "",
