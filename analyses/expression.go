@@ -16,6 +16,8 @@ type expression struct {
 	arguments []*expression
 	x         []complex128 // the arguments at one sample
 	out       [samplesPerStep]complex128
+	fixed     bool   // does not change over time
+	straight  bool   // a sum of multiples of columns: a cubic where they are
 	key       string // the same for expressions that compute the same
 }
 
@@ -29,7 +31,7 @@ func (e *evaluation) compile(r *recording, q netlist.Quantity) (*expression, err
 		if err != nil {
 			return nil, err
 		}
-		x := &expression{column: -1, key: fmt.Sprintf("%x %x", math.Float64bits(real(v)), math.Float64bits(imag(v)))}
+		x := &expression{column: -1, fixed: true, straight: true, key: fmt.Sprintf("%x %x", math.Float64bits(real(v)), math.Float64bits(imag(v)))}
 		for k := range x.out {
 			x.out[k] = v
 		}
@@ -40,7 +42,7 @@ func (e *evaluation) compile(r *recording, q netlist.Quantity) (*expression, err
 	if !ok {
 		return nil, fmt.Errorf("%s was not recorded", q.Describe().Text)
 	}
-	return &expression{column: c.index, key: key}, nil
+	return &expression{column: c.index, straight: true, key: key}, nil
 }
 
 func (e *evaluation) compileApply(r *recording, q *netlist.Apply) (*expression, error) {
@@ -60,8 +62,31 @@ func (e *evaluation) compileApply(r *recording, q *netlist.Apply) (*expression, 
 	if x.operation, ok = operationOf(q.Op, isComplex); !ok {
 		return nil, fmt.Errorf("the operation %s cannot be computed", q.Op)
 	}
+	x.straight = isStraight(q.Op, x.arguments)
 	x.key = fmt.Sprintf("%s %t(%s)", q.Op, isComplex, strings.Join(keys, ", "))
 	return x, nil
+}
+
+// isStraight reports whether an operation makes a sum of multiples of columns.
+func isStraight(op string, arguments []*expression) bool {
+	changing := 0
+	for _, a := range arguments {
+		if !a.straight {
+			return false
+		}
+		if !a.fixed {
+			changing++
+		}
+	}
+	switch op {
+	case "+", "-", "neg", "real":
+		return true
+	case "*":
+		return changing <= 1
+	case "/":
+		return arguments[1].fixed
+	}
+	return false
 }
 
 // read fills y with the expression's real values for the samples of all columns.

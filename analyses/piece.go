@@ -8,6 +8,9 @@ const samplesPerStep = 4
 // samples are the values of a quantity at four equally spaced points of a step, its ends included.
 type samples [samplesPerStep]float64
 
+// isNaN reports whether any of the samples is not a number.
+func (y *samples) isNaN() bool { return math.IsNaN(y[0] + y[1] + y[2] + y[3]) }
+
 // piece is a waveform over a time in which it is one cubic.
 type piece struct {
 	c      cubic
@@ -35,7 +38,7 @@ func (p *piece) time(u float64) float64 {
 }
 
 // isNaN reports whether the piece is not a number somewhere.
-func (p *piece) isNaN() bool { return math.IsNaN(p.y[0] + p.y[1] + p.y[2] + p.y[3]) }
+func (p *piece) isNaN() bool { return p.y.isNaN() }
 
 // cubic is c[0] + c[1] u + c[2] u^2 + c[3] u^3 on u in 0..1.
 type cubic [4]float64

@@ -17,6 +17,7 @@ type recording struct {
 	accuracy float64 // relative to the swing of a column
 	columns  map[string]*column
 	list     []*column // those of columns, in the order in which they were asked for
+	bent     map[string]*bent
 	words    map[string]*wordColumn
 	streams  map[string]*stream
 	order    []*stream // those of streams, in the order in which they were asked for
@@ -46,7 +47,7 @@ type wordColumn struct {
 
 func newRecording(m *model, w window, accuracy float64) *recording {
 	return &recording{
-		window: w, model: m, accuracy: accuracy, begun: math.NaN(), columns: map[string]*column{}, words: map[string]*wordColumn{},
+		window: w, model: m, accuracy: accuracy, begun: math.NaN(), columns: map[string]*column{}, bent: map[string]*bent{}, words: map[string]*wordColumn{},
 		streams: map[string]*stream{}, readings: map[netlist.Quantity]*reading{},
 	}
 }
@@ -198,13 +199,29 @@ func allowance(accuracy, low, high float64) float64 {
 // good reports whether the cubics of a piece agree with the samples of its halves.
 func (r *recording) good(values, left, right []samples) bool {
 	for i, c := range r.list {
-		allowed := allowance(r.accuracy, c.low, c.high) + c.noise
-		whole := newCubic(values[i][:])
-		for k := range samplesPerStep {
-			u := float64(k) / (2 * (samplesPerStep - 1))
-			if !(math.Abs(whole.at(u)-left[i][k]) <= allowed && math.Abs(whole.at(u+0.5)-right[i][k]) <= allowed) {
-				return false
-			}
+		if !agree(&values[i], &left[i], &right[i], allowance(r.accuracy, c.low, c.high)+c.noise) {
+			return false
+		}
+	}
+	for _, b := range r.bent {
+		if !b.good(r, values, left, right) {
+			return false
+		}
+	}
+	return true
+}
+
+// agree reports whether the cubic through the samples of a piece is within what is allowed of those of its halves. Nothing is gained by halving what
+// is not a number.
+func agree(whole, left, right *samples, allowed float64) bool {
+	if whole.isNaN() {
+		return true
+	}
+	c := newCubic(whole[:])
+	for k := range samplesPerStep {
+		u := float64(k) / (2 * (samplesPerStep - 1))
+		if !(math.Abs(c.at(u)-left[k]) <= allowed && math.Abs(c.at(u+0.5)-right[k]) <= allowed) {
+			return false
 		}
 	}
 	return true

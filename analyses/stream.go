@@ -45,6 +45,7 @@ func (e *evaluation) stream(r *recording, q, x netlist.Quantity, reduce reducer,
 		s = &stream{expression: expression, kinds: map[string]accumulator{}}
 		r.streams[expression.key] = s
 		r.order = append(r.order, s)
+		r.bend(expression)
 	}
 	kind := reduce.key(n)
 	a, ok := s.kinds[kind]
@@ -62,6 +63,7 @@ func (e *evaluation) keep(r *recording, q netlist.Quantity) error {
 	if err := r.want(q, true); err != nil {
 		return err
 	}
+	e.bendWithin(r, q)
 	return e.reduceWithin(r, q)
 }
 
