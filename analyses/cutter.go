@@ -50,8 +50,8 @@ func (r *recording) cut(step *mna.Step, from float64) error {
 func (r *recording) halve(step *mna.Step, from, until float64, at slots, values []samples, depth int) error {
 	h := until - from
 	middle := from + h/2
-	if depth == pieceHalvings || !(middle > from && middle < until) {
-		r.pass(from, until, values)
+	if whole := !(middle > from && middle < until); whole || depth == pieceHalvings {
+		r.pass(from, until, values, !whole)
 		return nil
 	}
 	first := samplesPerStep + newSlots*depth
@@ -65,7 +65,7 @@ func (r *recording) halve(step *mna.Step, from, until float64, at slots, values 
 	r.read(left, middle-from, halves.left)
 	r.read(right, until-middle, halves.right)
 	if r.good(values, halves.left, halves.right) {
-		r.pass(from, until, values)
+		r.pass(from, until, values, false)
 		return nil
 	}
 	if err := r.halve(step, from, middle, left, halves.left, depth+1); err != nil {

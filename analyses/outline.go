@@ -21,11 +21,7 @@ func newOutline(accuracy float64) *outline {
 }
 
 func (a *outline) add(p *piece) {
-	if len(a.wave.knots) == 0 {
-		a.wave.knots = append(a.wave.knots, p.t0)
-	}
-	a.wave.knots = append(a.wave.knots, p.t1)
-	a.wave.values = append(a.wave.values, p.y[:]...)
+	a.wave.append(p)
 	a.slack = append(a.slack, 0)
 	for _, v := range p.y {
 		a.low, a.high = math.Min(a.low, v), math.Max(a.high, v)

@@ -23,6 +23,14 @@ func (p *piece) set(t0, t1 float64, y *samples) {
 	p.c, p.y, p.t0, p.t1 = newCubic(y[:]), *y, t0, t1
 }
 
+// line makes l the straight line between samples k and k+1 of p. It reports false if times are too coarse to tell its ends apart.
+func (p *piece) line(k int, l *piece) bool {
+	const n = samplesPerStep - 1
+	a, d := p.y[k], p.y[k+1]-p.y[k]
+	l.set(p.time(float64(k)/n), p.time(float64(k+1)/n), &samples{a, a + d/3, a + d*2/3, p.y[k+1]})
+	return l.t1 > l.t0
+}
+
 // length returns the length in s.
 func (p *piece) length() float64 { return p.t1 - p.t0 }
 

@@ -24,6 +24,7 @@ type recording struct {
 	readings map[netlist.Quantity]*reading
 	keeps    bool      // a column keeps its pieces
 	knots    []float64 // s, of the pieces that are kept
+	broken   []int     // those of them that no cubic fits
 	begun    float64   // s, start of the first piece; NaN before
 	cutter
 }
@@ -227,13 +228,17 @@ func agree(whole, left, right *samples, allowed float64) bool {
 	return true
 }
 
-// pass hands on a piece from one time to another, in s.
-func (r *recording) pass(from, until float64, values []samples) {
+// pass hands on a piece from one time to another, in s. A broken one, in which there is a kink that no cubic fits, is taken for the straight lines between its
+// samples: a cubic would swing beyond them.
+func (r *recording) pass(from, until float64, values []samples, broken bool) {
 	for _, s := range r.order {
-		s.add(from, until, values)
+		s.add(from, until, values, broken)
 	}
 	if !r.keeps {
 		return
+	}
+	if broken {
+		r.broken = append(r.broken, len(r.knots)-1)
 	}
 	r.knots = append(r.knots, until)
 	for i, c := range r.list {
@@ -241,6 +246,35 @@ func (r *recording) pass(from, until float64, values []samples) {
 			c.values = append(c.values, values[i][:]...)
 		}
 	}
+}
+
+// waveform computes an expression from the pieces that were kept.
+func (r *recording) waveform(x *expression) *Waveform {
+	w := &Waveform{}
+	columns := make([]samples, len(r.list))
+	broken := r.broken
+	var y samples
+	var p, line piece
+	for i := range len(r.knots) - 1 {
+		for k, c := range r.list {
+			if c.kept {
+				columns[k] = samples(c.values[samplesPerStep*i:])
+			}
+		}
+		x.read(columns, &y)
+		p.set(r.knots[i], r.knots[i+1], &y)
+		if len(broken) == 0 || broken[0] != i {
+			w.append(&p)
+			continue
+		}
+		broken = broken[1:]
+		for k := range samplesPerStep - 1 {
+			if p.line(k, &line) {
+				w.append(&line)
+			}
+		}
+	}
+	return w
 }
 
 func (c *wordColumn) add(x []float64, t float64) error {

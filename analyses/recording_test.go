@@ -169,6 +169,41 @@ bench still {
 	}
 }
 
+// TestKinksAreNotSwungOver: what is cut off at a level has no peak above it, a magnitude is nowhere below zero, and neither is steeper than what it is made of.
+func TestKinksAreNotSwungOver(t *testing.T) {
+	d, err := netlist.Load(fstest.MapFS{"x.poise": {Data: []byte(edges)}}, "x.poise")
+	require.NoError(t, err)
+	s, err := d.Bench("edge").Setup(nil)
+	require.NoError(t, err)
+	v, err := Measure(t.Context(), s, "peak(min(volts(in), 0.1V))", "trough(abs(volts(in) - 0.3V))", "slew(abs(volts(in) - 0.3V))", "slew(min(volts(in), 0.1V))", "max(volts(in), 0.25V)")
+	require.NoError(t, err)
+	require.Equal(t, 0.1, v[0].Float())
+	require.GreaterOrEqual(t, v[1].Float(), 0.0)
+	require.LessOrEqual(t, v[1].Float(), allowance(s.Circuit.Accuracy, 0, 0.7))
+	// From 10 % to 90 % of 1 V in 1 us.
+	near(t, 0.8e6, v[2].Float(), 1e-6*0.8e6)
+	near(t, 0.8e6, v[3].Float(), 1e-6*0.8e6)
+	trough, _ := v[4].Wave.Trough()
+	require.Equal(t, 0.25, trough)
+}
+
+func TestLinesOfAPiece(t *testing.T) {
+	var p, line piece
+	for _, t1 := range []float64{4, math.Nextafter(1, 2), 1 + 0x1p-51} {
+		p.set(1, t1, &samples{0, 3, -3, 9})
+		end := p.t0
+		for k := range samplesPerStep - 1 {
+			if p.line(k, &line) {
+				require.Equal(t, end, line.t0)
+				require.Equal(t, [2]float64{p.y[k], p.y[k+1]}, [2]float64{line.y[0], line.y[3]})
+				near(t, (p.y[k]+p.y[k+1])/2, line.c.at(0.5), 1e-15)
+				end = line.t1
+			}
+		}
+		require.Equal(t, t1, end)
+	}
+}
+
 // BenchmarkRecording looks at one step of a run again and again: for a waveform that is kept, for its extremes, for three reducers.
 func BenchmarkRecording(b *testing.B) {
 	for bench, frequency := range map[string]string{"hum": "50Hz", "carrier": "1MHz"} {

@@ -13,14 +13,27 @@ type stream struct {
 	accumulators []accumulator
 	kinds        map[string]accumulator
 	y            samples
-	piece        piece
+	piece, line  piece
 }
 
-func (s *stream) add(from, until float64, columns []samples) {
+// add takes the samples of all columns in a piece. If it is broken, no cubic fits some of them.
+func (s *stream) add(from, until float64, columns []samples, broken bool) {
 	s.expression.read(columns, &s.y)
 	s.piece.set(from, until, &s.y)
+	if !broken {
+		s.pass(&s.piece)
+		return
+	}
+	for k := range samplesPerStep - 1 {
+		if s.piece.line(k, &s.line) {
+			s.pass(&s.line)
+		}
+	}
+}
+
+func (s *stream) pass(p *piece) {
 	for _, a := range s.accumulators {
-		a.add(&s.piece)
+		a.add(p)
 	}
 }
 
@@ -163,20 +176,10 @@ func (e *evaluation) waveform(q netlist.Quantity) (*Waveform, error) {
 	if err != nil {
 		return nil, err
 	}
-	if x.column >= 0 {
+	if x.column >= 0 && len(r.broken) == 0 {
 		return &Waveform{knots: r.knots, values: r.list[x.column].values}, nil
 	}
-	w := &Waveform{knots: r.knots, values: make([]float64, samplesPerStep*(len(r.knots)-1))}
-	columns := make([]samples, len(r.list))
-	for i := range w.steps() {
-		for k, c := range r.list {
-			if c.kept {
-				columns[k] = samples(c.values[samplesPerStep*i:])
-			}
-		}
-		x.read(columns, (*samples)(w.values[samplesPerStep*i:]))
-	}
-	return w, nil
+	return r.waveform(x), nil
 }
 
 // has reports a column that q needs and that was not kept.

@@ -35,6 +35,15 @@ func (w *Waveform) pieces() iter.Seq[*piece] {
 	}
 }
 
+// append adds a piece that begins where w ends.
+func (w *Waveform) append(p *piece) {
+	if len(w.knots) == 0 {
+		w.knots = append(w.knots, p.t0)
+	}
+	w.knots = append(w.knots, p.t1)
+	w.values = append(w.values, p.y[:]...)
+}
+
 // accumulated gives all pieces of w to a and returns it.
 func accumulated[A accumulator](w *Waveform, a A) A {
 	for p := range w.pieces() {
