@@ -46,6 +46,7 @@ type ndf struct {
 	since   int     // accepted steps since the order changed
 	memory  float64 // by how much the allowed error is reduced, see recall
 	lasting float64 // number of steps that the share of an error that lasts does, at the last choice of the order
+	choices int     // of the order
 	ramp    bool    // no step since the start was limited by its error
 
 	known  int                // points that the differences rest on
@@ -177,11 +178,11 @@ func (m *ndf) bend(order int) float64 {
 		}
 		largest = max(largest, product)
 	}
-	return bendMargin * largest
+	return bentMargin * largest
 }
 
-// bendMargin is what the largest of the places looked at may lack of the largest of all.
-const bendMargin = 1.1
+// bentMargin is what the largest of the places looked at may lack of the largest of all.
+const bentMargin = 1.1
 
 // judge estimates the error of every unknown at the end of the step and of its interpolation within.
 //
@@ -341,7 +342,7 @@ func (m *ndf) propose(ratio float64) float64 {
 	k := m.order
 	m.ramp = m.ramp && ratio <= 0.5
 	m.ratios[k] = max(m.ratios[k], ratio)
-	if m.ramp || m.since%2 == 0 || m.since >= k {
+	if m.ramp || (k-m.since)%2 == 0 {
 		if k > 1 {
 			below, _ := m.largest(k - 1)
 			m.ratios[k-1] = max(m.ratios[k-1], below)
@@ -356,7 +357,9 @@ func (m *ndf) propose(ratio float64) float64 {
 		most = growStart
 	}
 	if m.ramp || m.since >= k {
-		m.memory = m.recall()
+		if m.choices++; m.ramp || m.choices%recallEvery == 0 {
+			m.memory = m.recall()
+		}
 		if f := m.choose(); m.nextOrder != k {
 			return math.Min(f, most)
 		}
@@ -367,6 +370,8 @@ func (m *ndf) propose(ratio float64) float64 {
 const (
 	// forgotten is the number of steps over which errors may add up in the same direction as far as the allowed error of a step provides for it.
 	forgotten = 60
+	// recallEvery is the number of choices of the order after which the memory is looked at again: it changes with the region the devices work in.
+	recallEvery = 3
 	// recallMost bounds what a longer memory takes off the allowed error.
 	recallMost = 16
 )

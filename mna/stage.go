@@ -24,9 +24,17 @@ type stageNewton struct {
 	last   []float64 // where the evaluation before was made, by unknown
 	g, c   []float64 // its derivatives, by slot
 	update []float64 // of the free unknowns
-	moved  float64   // from there to the present evaluation, in allowed errors
 	known  bool      // there was one that tells something
+
+	bend   float64 // largest error after one update beside half of its square, in allowed errors, seen lately
+	unseen int     // updates since it was looked at
 }
+
+const (
+	// bendMargin is how many times what was seen lately the error after an update may be before it is looked at again, and looks how many updates may pass.
+	bendMargin = 300
+	bendLooks  = 4
+)
 
 func newStageNewton(r *integration) stageNewton {
 	n := len(r.s.names)
@@ -48,20 +56,21 @@ func (n *stageNewton) solve(p *problem) error {
 		if err := w.step(p); err != nil {
 			return err
 		}
-		n.track()
+		copy(n.update, w.update)
 		size, finite := n.apply()
 		switch {
 		case !finite:
 			return errDiverged
 		case e.Limited:
+			n.note()
 			n.known, last = false, 0
 			continue
 		case size <= stageShare, n.leaves(p.alpha, size) <= stageShare, last > 0 && size > stallRatio*last && n.movement() <= stall(i):
-			n.known = true
+			n.note()
 			w.carry(n.update)
 			return nil
 		}
-		n.known = true
+		n.note()
 		w.repivot = last > 0 && size > stallRatio*last
 		last = size
 	}
@@ -75,24 +84,39 @@ func (n *stageNewton) remember() {
 	n.c, e.C = e.C, n.c
 }
 
-// track notes where the evaluation was made, how far that is from the one before, in allowed errors, and the update.
-func (n *stageNewton) track() {
-	x := n.r.w.eval.X
-	n.moved = 0
-	for k := n.r.s.first(); k < len(x); k++ {
-		n.moved = max(n.moved, math.Abs(x[k]-n.last[k])*n.r.perError[k])
-		n.last[k] = x[k]
+// note takes the present evaluation, whose update has been applied, as the last one.
+func (n *stageNewton) note() {
+	n.known = true
+	for i, x := range n.r.w.eval.X[n.r.s.first():] {
+		n.last[n.r.s.first()+i] = x - n.update[i]
 	}
-	copy(n.update, n.r.w.update)
 }
 
-// leaves estimates the error after an update of the given size, both in allowed errors.
+// leaves estimates the error after an update of the given size, which has been applied, both in allowed errors.
 func (n *stageNewton) leaves(alpha, size float64) float64 {
-	w, first := n.r.w, n.r.s.first()
-	e := &w.eval
-	if !n.known || n.moved == 0 {
+	if !n.known {
 		return math.Inf(1)
 	}
+	if n.unseen++; n.unseen < bendLooks && bendMargin*n.bend*size*size/2 <= stageShare {
+		return 0
+	}
+	change := n.changes(alpha)
+	moved := 0.0
+	for i, x := range n.r.w.eval.X[n.r.s.first():] {
+		k := n.r.s.first() + i
+		moved = max(moved, math.Abs(x-n.update[i]-n.last[k])*n.r.perError[k])
+	}
+	if moved == 0 {
+		return math.Inf(1)
+	}
+	n.unseen, n.bend = 0, max(change/(size*moved), n.bend/2)
+	return change * size / moved / 2
+}
+
+// changes returns the size, in allowed errors, of what the change of the Jacobian since the last evaluation makes of the update.
+func (n *stageNewton) changes(alpha float64) float64 {
+	w, first := n.r.w, n.r.s.first()
+	e := &w.eval
 	clear(w.update)
 	for k, g := range e.G {
 		row, col := int(w.sys.rows[k])-first, int(w.sys.cols[k])-first
@@ -105,11 +129,11 @@ func (n *stageNewton) leaves(alpha, size float64) float64 {
 	}
 	w.lu.Solve(w.update)
 	w.work.Solves++
-	left := 0.0
+	size := 0.0
 	for i, d := range w.update {
-		left = max(left, math.Abs(d)*n.r.perError[first+i])
+		size = max(size, math.Abs(d)*n.r.perError[first+i])
 	}
-	return left * size / n.moved / 2
+	return size
 }
 
 // movement is the largest update beside the largest unknown of its kind.
@@ -129,7 +153,7 @@ func stall(i int) float64 {
 
 // forget makes the next stage learn anew how the derivatives change: something has happened in between.
 func (n *stageNewton) forget() {
-	n.known = false
+	n.known, n.unseen = false, bendLooks
 	n.r.w.repivot = true
 }
 
