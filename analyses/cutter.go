@@ -1,10 +1,16 @@
 package analyses
 
-import "poise/mna"
+import (
+	"math"
+
+	"poise/mna"
+)
 
 const (
-	// pieceHalvings bounds how often a step is halved; at a kink no number of halvings is enough.
-	pieceHalvings = 6
+	// pieceHalvings bounds how often a step is halved: at a kink no number of halvings is enough.
+	pieceHalvings = 9
+	// mostHalvings bounds the halvings of one step. A kink takes pieceHalvings of them; what takes more is no few kinks.
+	mostHalvings = 63
 	// newSlots is the number of points at which a piece is looked at anew if it is halved: the middles between its samples.
 	newSlots = samplesPerStep - 1
 	// allSlots is the number of points of a step that are in use at a time.
@@ -17,12 +23,16 @@ type slots [samplesPerStep]int
 // cutter cuts a step into pieces on which all columns are cubics. Every point of the step is looked at once.
 type cutter struct {
 	x      []float64 // the solution at the point looked at
+	smooth int       // halvings after which a cubic fits what is smooth
+	left   int       // halvings that the step may still take
 	whole  []samples
 	halves [pieceHalvings]struct{ left, right []samples }
 }
 
-func newCutter(columns, unknowns int) cutter {
-	c := cutter{x: make([]float64, unknowns), whole: make([]samples, columns)}
+func newCutter(columns, unknowns int, accuracy float64) cutter {
+	// Each halving makes the error of a cubic 16 times smaller.
+	smooth := math.Ceil(math.Log2(1/(pieceShare*accuracy)) / 4)
+	c := cutter{x: make([]float64, unknowns), smooth: int(min(smooth, pieceHalvings)), whole: make([]samples, columns)}
 	for d := range c.halves {
 		c.halves[d].left, c.halves[d].right = make([]samples, columns), make([]samples, columns)
 	}
@@ -31,6 +41,7 @@ func newCutter(columns, unknowns int) cutter {
 
 // cut hands the pieces of a step from a time in s on.
 func (r *recording) cut(step *mna.Step, from float64) error {
+	r.left = mostHalvings
 	at := slots{0, 1, 2, 3}
 	h := step.T1 - from
 	for k, slot := range at {
@@ -46,12 +57,14 @@ func (r *recording) cut(step *mna.Step, from float64) error {
 	return r.halve(step, from, step.T1, at, r.whole, 0)
 }
 
-// halve passes a piece on if its cubics are good enough, else its halves. The piece has been halved depth times before.
+// halve passes a piece on if its cubics are good enough, else its halves. The piece has been halved depth times before; if that should have been enough, there
+// is a kink in it or beside it.
 func (r *recording) halve(step *mna.Step, from, until float64, at slots, values []samples, depth int) error {
 	h := until - from
 	middle := from + h/2
-	if whole := !(middle > from && middle < until); whole || depth == pieceHalvings {
-		r.pass(from, until, values, !whole)
+	broken := depth > r.smooth
+	if depth == pieceHalvings || r.left == 0 || !(middle > from && middle < until) {
+		r.pass(from, until, values, broken)
 		return nil
 	}
 	first := samplesPerStep + newSlots*depth
@@ -65,9 +78,10 @@ func (r *recording) halve(step *mna.Step, from, until float64, at slots, values 
 	r.read(left, middle-from, halves.left)
 	r.read(right, until-middle, halves.right)
 	if r.good(values, halves.left, halves.right) {
-		r.pass(from, until, values, false)
+		r.pass(from, until, values, broken)
 		return nil
 	}
+	r.left--
 	if err := r.halve(step, from, middle, left, halves.left, depth+1); err != nil {
 		return err
 	}

@@ -147,7 +147,7 @@ func (r *recording) begin(start float64) {
 	if r.keeps {
 		r.knots = append(r.knots, start)
 	}
-	r.cutter = newCutter(len(r.list), r.model.system.Size())
+	r.cutter = newCutter(len(r.list), r.model.system.Size(), r.accuracy)
 }
 
 // look reads all columns at a time t in s of a step into a slot of their taps.
@@ -228,8 +228,8 @@ func agree(whole, left, right *samples, allowed float64) bool {
 	return true
 }
 
-// pass hands on a piece from one time to another, in s. A broken one, in which there is a kink that no cubic fits, is taken for the straight lines between its
-// samples: a cubic would swing beyond them.
+// pass hands on a piece from one time to another, in s. A broken one, at a kink, is taken for the straight lines between its samples: a cubic would
+// swing beyond them.
 func (r *recording) pass(from, until float64, values []samples, broken bool) {
 	for _, s := range r.order {
 		s.add(from, until, values, broken)

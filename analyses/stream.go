@@ -16,7 +16,7 @@ type stream struct {
 	piece, line  piece
 }
 
-// add takes the samples of all columns in a piece. If it is broken, no cubic fits some of them.
+// add takes the samples of all columns in a piece, which may be broken.
 func (s *stream) add(from, until float64, columns []samples, broken bool) {
 	s.expression.read(columns, &s.y)
 	s.piece.set(from, until, &s.y)
