@@ -283,14 +283,18 @@ func (m *ndf) listen() {
 	copy(m.noise, w.update)
 }
 
-// beyondNoise returns the largest error beside the allowed one after the rounding is taken off.
+// differenceMargin is how many times the sum of the weights of a difference over equal steps the rounding of unknowns may count in it over others.
+const differenceMargin = 32
+
+// beyondNoise returns the largest error beside the allowed one after the rounding is taken off, which differences of high degree enlarge.
 func (m *ndf) beyondNoise() (float64, int) {
-	r, k := m.r, m.order
-	first := r.s.first()
-	bend := m.bend(k) / r.dense
+	k, first := m.order, m.r.s.first()
+	bend := m.bend(k) / m.r.dense
+	share, _ := m.share(k)
+	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(share)*m.distance[0]*m.memory, bend/m.reach[k+1])
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
-		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - noiseMargin*math.Abs(m.noise[i])
+		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*math.Abs(m.noise[i])
 		e *= m.weight(first + i)
 		if !(e <= math.MaxFloat64) {
 			return math.Inf(1), first + i
@@ -320,7 +324,8 @@ func (m *ndf) refuse(ratio float64) float64 {
 	m.failures++
 	f := m.control.factor(ratio)
 	if k := m.order; m.failures >= patience {
-		m.setOrder(1)
+		// The error is not one of the step but of the past: a kink, or rounding that differences enlarge.
+		m.restart(&m.newest)
 	} else if k > 1 {
 		if below, _ := m.largest(k - 1); below < ratio {
 			m.setOrder(k - 1)

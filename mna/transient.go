@@ -61,7 +61,10 @@ func (e *StepError) Error() string {
 
 func (e *StepError) Unwrap() error { return e.Reason }
 
-var errInexact = errors.New("the estimated error stays too large")
+var (
+	errInexact  = errors.New("the estimated error stays too large")
+	errCreeping = errors.New("hundreds of thousands of steps bring it no further")
+)
 
 const (
 	defaultAccuracy = 1e-4
@@ -74,6 +77,9 @@ const (
 	// leastShare bounds steps from below, as a share of the whole time: near time 0, where a cold circuit may do things of any
 	// speed, numbers tell apart far shorter times.
 	leastShare = 1e-21
+	// creepTries and creepShare bound a run that gets nowhere: that many tries must advance by that share of the whole time.
+	creepTries = 1 << 19
+	creepShare = 1e-9
 	// leastBits is the shortest step in last bits of the time.
 	leastBits = 16
 )
@@ -144,6 +150,9 @@ type integration struct {
 	since  float64 // s, where the next step begins: t but for a restart, where it is the corner
 	h      float64 // s, the step to try
 	corner float64 // s, the next corner
+
+	tries int     // since mark
+	mark  float64 // s
 
 	first float64 // s, the step that was tried first after the last corner
 	blind float64 // s, the length of the next step whose error is not asked for, after one of that kind
@@ -240,6 +249,12 @@ func (r *integration) run(sink func(*Step) error) error {
 
 // try attempts one step and reports whether it is accepted; r.h is what to take next.
 func (r *integration) try() (bool, error) {
+	if r.tries++; r.tries == creepTries {
+		if r.t-r.mark < creepShare*r.o.Until {
+			return false, r.fail(r.worst, errCreeping)
+		}
+		r.tries, r.mark = 0, r.t
+	}
 	end := r.target()
 	if !(end-r.t >= r.shortest()) && end != r.corner {
 		return false, r.fail(r.worst, errInexact)
