@@ -38,19 +38,30 @@ func (x *exponential) at(v float64) (i, g float64) {
 	return x.is * (value - 1), x.gain * slope
 }
 
-// limitedSteps is the length, in units of nVt, of a step upwards that is always allowed.
-const limitedSteps = 2
+// freeSteps are the shares of nVt by which a junction may always move up and down.
+const (
+	freeUp   = 2.0
+	freeDown = 0.5
+)
 
-// limit shortens a step upwards from the junction voltage last to v where the exponential is steep: the step in voltage
-// becomes the one that the linearised junction would make in current, v' = last + nVt ln(1 + (v - last)/nVt), as if
-// the iteration were on the current. (Iterating on whichever of current and voltage changes less:
-// Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.)
+// limit moves the evaluation of a junction from where Newton's method asks for it, v, to where the exponential carries the current that the
+// linearised junction at the last voltage carries there: v' = last + nVt ln(1 + (v - last)/nVt), as if the iteration were on the current. (Iterating on
+// whichever of current and voltage changes less: Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.)
 func (x *exponential) limit(v, last float64) (float64, bool) {
-	base := max(last, x.knee)
-	if !(v > base+limitedSteps*x.nVt) {
-		return v, false
+	u := (v - last) * x.inverse
+	switch {
+	case u > freeUp && v > x.knee:
+		return max(last+x.nVt*math.Log1p(u), x.knee), true
+	case u < -freeDown && last > x.knee/2:
+		low := 0.0
+		if u > -1 {
+			low = last + x.nVt*math.Log1p(u)
+		}
+		if w := max(low, 0); w > v || u > -1 {
+			return w, true
+		}
 	}
-	return base + x.nVt*(limitedSteps+math.Log1p((v-base)*x.inverse-limitedSteps)), true
+	return v, false
 }
 
 // depletion is the charge of a junction's depletion layer.

@@ -71,13 +71,9 @@ func (c *climb) balance() error {
 // magnitudes evaluates each device alone and returns, for every row, how much of its terms may be left over. It leaves eval with
 // one device's terms.
 func (c *climb) magnitudes() []float64 {
-	w, e := c.w, &c.w.eval
+	e := &c.w.eval
 	size := make([]float64, len(e.F))
-	for k, j := range w.jacobian {
-		if row, col := c.s.rows[k], c.s.cols[k]; row > 0 && col > 0 {
-			size[row] += rounding * math.Abs(j*e.X[col])
-		}
-	}
+	c.roundings(size)
 	clear(e.F)
 	clear(e.Q)
 	for i, s := range c.s.stamps {
@@ -98,6 +94,27 @@ func (c *climb) magnitudes() []float64 {
 		size[i] += balanceShare * math.Abs(v)
 	}
 	return size
+}
+
+// roundings adds to size what rounding may leave of every row. Within a device terms cancel, of which each carries the rounding of the largest
+// voltage that it depends on.
+func (c *climb) roundings(size []float64) {
+	w, x := c.w, c.w.eval.X
+	volts, siemens := make([]float64, len(size)), make([]float64, len(size)) // of each row: the largest voltage, the sum of the derivatives by voltages
+	for k, j := range w.jacobian {
+		row, col := c.s.rows[k], c.s.cols[k]
+		switch {
+		case row <= 0 || col <= 0 || j == 0:
+		case c.s.branch[col]:
+			size[row] += rounding * math.Abs(j*x[col])
+		default:
+			siemens[row] += math.Abs(j)
+			volts[row] = max(volts[row], math.Abs(x[col]))
+		}
+	}
+	for row := range size {
+		size[row] += rounding * siemens[row] * volts[row]
+	}
 }
 
 // undetermined is the factor by which a disturbance of the equations in their last bits may grow to no more than the size of the
