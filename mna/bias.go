@@ -100,18 +100,25 @@ func (s *System) newClimb(ctx context.Context, w *workspace, base problem, log *
 	return &climb{ctx: ctx, s: s, w: w, base: base, log: log, best: s.newState(), distance: math.Inf(1)}
 }
 
-// run tries one method after the other, each from the best point so far. It leaves the solution in the workspace.
+// run tries one method after the other. The line search goes on from the best point so far; the continuations set out from the start
+// again, for a point at which Newton's method got lost is a worse beginning than none. It leaves the solution in the workspace.
 func (c *climb) run() error {
 	c.s.hold(c.w.eval.X, c.base.time, c.base.drive)
 	c.best.save(&c.w.eval)
+	start := c.s.newState()
+	start.save(&c.w.eval)
 	rungs := []struct {
 		name string
+		from *state
 		run  func() error
-	}{{RungNewton, c.plain}, {RungDamped, c.damped}, {RungPseudo, c.pseudo}, {RungSources, c.sources}, {RungShunts, c.shunts}}
+	}{
+		{RungNewton, &start, c.plain}, {RungDamped, &c.best, c.damped},
+		{RungPseudo, &start, c.pseudo}, {RungSources, &start, c.sources}, {RungShunts, &start, c.shunts},
+	}
 	var last error
 	for _, r := range rungs {
 		c.rung = r.name
-		c.best.load(&c.w.eval)
+		r.from.load(&c.w.eval)
 		err := r.run()
 		if err == nil {
 			err = c.accept()
@@ -187,14 +194,18 @@ func (c *climb) newton(p *problem, most int) error {
 	return err
 }
 
+// plainIterations is the number of iterations after which Newton's method by itself has lost its way: where it finds the point at all, it
+// takes a third of them.
+const plainIterations = 40
+
 func (c *climb) plain() error {
 	p := c.base
-	return c.newton(&p, biasIterations)
+	return c.newton(&p, plainIterations)
 }
 
 func (c *climb) damped() error {
 	p := c.base
-	n, err := c.w.damped(c.ctx, &p, biasIterations)
+	n, err := c.w.damped(c.ctx, &p, plainIterations)
 	c.iterations += n
 	return err
 }

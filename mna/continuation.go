@@ -18,13 +18,21 @@ func pace(n int, most float64) float64 {
 
 // attempt solves p, with junction limits or else with a line search, and returns the number of iterations. It goes back to the point good if that fails.
 func (c *climb) attempt(p *problem, good *state) (int, error) {
-	n, err := c.w.newton(c.ctx, p, continuationIterations)
-	if err != nil && c.ctx.Err() == nil {
-		good.load(&c.w.eval)
-		var more int
-		more, err = c.w.damped(c.ctx, p, continuationIterations)
-		n += more
+	n, err := c.briefly(p, good, continuationIterations)
+	if err == nil || c.ctx.Err() != nil {
+		return n, err
 	}
+	more, err := c.w.damped(c.ctx, p, continuationIterations)
+	c.iterations += more
+	if err != nil {
+		good.load(&c.w.eval)
+	}
+	return n + more, err
+}
+
+// briefly solves p with junction limits in so many iterations at most, and returns their number. It goes back to the point good if that fails.
+func (c *climb) briefly(p *problem, good *state, most int) (int, error) {
+	n, err := c.w.newton(c.ctx, p, most)
 	c.iterations += n
 	if err != nil {
 		good.load(&c.w.eval)
@@ -38,6 +46,8 @@ const (
 	leastPseudo   = 1e-15 // S: a step so long is Newton's method itself
 	pseudoGrow    = 10.0
 	pseudoShrink  = 8.0
+	// pseudoIterations is the number of iterations after which a shorter step is cheaper than a longer search.
+	pseudoIterations = 50
 	// restShare is a movement beside the largest voltage below which the circuit is nearly at rest.
 	restShare = 1e-3
 )
@@ -51,8 +61,15 @@ func (c *climb) pseudo() error {
 	good.save(&c.w.eval)
 	p := c.base
 	p.anchor, p.shunt = good.x, firstPseudo
+	begun := false
 	for range continuationSteps {
-		n, err := c.attempt(&p, &good)
+		var n int
+		var err error
+		if begun {
+			n, err = c.briefly(&p, &good, pseudoIterations)
+		} else {
+			n, err = c.attempt(&p, &good) // no length of the step spares the jump of the held nodes at its start
+		}
 		if c.ctx.Err() != nil {
 			return c.ctx.Err()
 		}
@@ -64,6 +81,7 @@ func (c *climb) pseudo() error {
 		}
 		calm := c.movement(good.x) <= restShare
 		good.save(&c.w.eval)
+		begun = true
 		p.shunt /= pace(n, pseudoGrow)
 		if calm || p.shunt < leastPseudo {
 			bare := c.base

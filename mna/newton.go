@@ -83,6 +83,9 @@ func (w *workspace) newton(ctx context.Context, p *problem, most int) (int, erro
 		if err := w.step(p); err != nil {
 			return i, err
 		}
+		if e.Limited {
+			w.shorten()
+		}
 		a := w.apply(1)
 		switch {
 		case !a.finite:
@@ -95,6 +98,23 @@ func (w *workspace) newton(ctx context.Context, p *problem, most int) (int, erro
 		last = a.move
 	}
 	return most, errSlow
+}
+
+const (
+	stride      = 1e3 // V
+	strideShare = 1e3
+)
+
+// shorten bounds how far the update of a limited iteration moves a voltage: to a thousand times its size and a kilovolt. Driven by a current, a
+// junction at rest asks for up to 1e17 V, in which the next update would lose the volts that the junction settles at.
+func (w *workspace) shorten() {
+	first := w.sys.first()
+	for i, d := range w.update {
+		if !w.sys.branch[first+i] {
+			most := stride + strideShare*math.Abs(w.eval.X[first+i])
+			w.update[i] = math.Max(-most, math.Min(most, d))
+		}
+	}
 }
 
 // The damping of Deuflhard, Newton Methods for Nonlinear Problems, 2004, algorithm NLEQ-ERR, section 3.3.3: a step is
