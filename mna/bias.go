@@ -134,24 +134,34 @@ func (c *climb) run() error {
 		last = err
 		c.compare()
 	}
-	return c.giveUp(last)
+	return c.giveUp(&start, last)
 }
 
-// giveUp says why no method found a solution.
-func (c *climb) giveUp(last error) error {
+// giveUp says why no method found a solution from start.
+func (c *climb) giveUp(start *state, last error) error {
+	start.load(&c.w.eval)
+	if err := c.singularHere(); err != nil {
+		return err
+	}
 	c.best.load(&c.w.eval)
-	c.settleJunctions()
 	var singular *SingularError
 	if errors.As(last, &singular) {
-		c.w.assemble(&c.base)
-		if c.w.factor() != nil {
-			return c.w.undetermined()
-		}
-		if err := c.w.determined(); err != nil {
+		if err := c.singularHere(); err != nil {
 			return err
 		}
 	}
+	c.settleJunctions()
 	return c.resistance(last)
+}
+
+// singularHere returns a *SingularError if the equations leave an unknown free at the current point.
+func (c *climb) singularHere() error {
+	c.settleJunctions()
+	c.w.assemble(&c.base)
+	if c.w.factor() != nil {
+		return c.w.undetermined()
+	}
+	return c.w.determined()
 }
 
 // compare keeps the better of the current point and the best so far.
