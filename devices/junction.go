@@ -38,28 +38,28 @@ func (x *exponential) at(v float64) (i, g float64) {
 	return x.is * (value - 1), x.gain * slope
 }
 
-// freeSteps are the shares of nVt by which a junction may always move up and down.
+// The lengths, in units of nVt, of the steps up and down that a junction may always take.
 const (
 	freeUp   = 2.0
 	freeDown = 0.5
 )
 
-// limit moves the evaluation of a junction from where Newton's method asks for it, v, to where the exponential carries the current that the
-// linearised junction at the last voltage carries there: v' = last + nVt ln(1 + (v - last)/nVt), as if the iteration were on the current. (Iterating on
-// whichever of current and voltage changes less: Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.)
+// limit moves the evaluation of a junction from v, where Newton's method asks for it, to where the exponential carries the current that the
+// junction linearised at the last voltage carries at v: v' = last + nVt ln(1 + (v - last)/nVt), as if the iteration were on the current. (Iterating on
+// whichever of current and voltage changes less: Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.) On the way up
+// it goes at least to the knee, below which no current is worth an iteration; on the way down it stops at rest first, since a
+// reversed junction has no conductance to tell where it came from.
 func (x *exponential) limit(v, last float64) (float64, bool) {
 	u := (v - last) * x.inverse
 	switch {
 	case u > freeUp && v > x.knee:
 		return max(last+x.nVt*math.Log1p(u), x.knee), true
-	case u < -freeDown && last > x.knee/2:
-		low := 0.0
-		if u > -1 {
-			low = last + x.nVt*math.Log1p(u)
-		}
-		if w := max(low, 0); w > v || u > -1 {
-			return w, true
-		}
+	case !(u < -freeDown && last > max(x.knee, 0)/2):
+		return v, false
+	case u > -1:
+		return max(last+x.nVt*math.Log1p(u), 0), true
+	case v < 0:
+		return 0, true
 	}
 	return v, false
 }

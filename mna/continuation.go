@@ -1,12 +1,26 @@
 package mna
 
-import "math"
+import (
+	"iter"
+	"math"
+)
 
 const (
-	continuationIterations = 100 // of Newton's method at one point of a continuation
-	continuationSteps      = 500 // before a continuation is given up
-	easyIterations         = 8   // up to which the next step of a continuation is longer by all that is allowed
+	continuationIterations = 100  // of Newton's method at one point of a continuation
+	briefIterations        = 50   // after which a shorter step is cheaper than a longer search
+	continuationSteps      = 500  // before a continuation is given up
+	continuationMost       = 5000 // iterations of a continuation, likewise
+	easyIterations         = 8    // up to which the next step of a continuation is longer by all that is allowed
 )
+
+// steps counts the steps of a continuation until it has gone on for too long.
+func (c *climb) steps() iter.Seq[int] {
+	until := c.iterations + continuationMost
+	return func(yield func(int) bool) {
+		for i := 0; i < continuationSteps && c.iterations < until && yield(i); i++ {
+		}
+	}
+}
 
 // pace is by how much the next step of a continuation is longer after one that took n iterations; most after an easy one.
 func pace(n int, most float64) float64 {
@@ -18,7 +32,7 @@ func pace(n int, most float64) float64 {
 
 // attempt solves p, with junction limits or else with a line search, and returns the number of iterations. It goes back to the point good if that fails.
 func (c *climb) attempt(p *problem, good *state) (int, error) {
-	n, err := c.briefly(p, good, continuationIterations)
+	n, err := c.limited(p, good, continuationIterations)
 	if err == nil || c.ctx.Err() != nil {
 		return n, err
 	}
@@ -30,8 +44,13 @@ func (c *climb) attempt(p *problem, good *state) (int, error) {
 	return n + more, err
 }
 
-// briefly solves p with junction limits in so many iterations at most, and returns their number. It goes back to the point good if that fails.
-func (c *climb) briefly(p *problem, good *state, most int) (int, error) {
+// briefly does the same with junction limits alone, and gives up early.
+func (c *climb) briefly(p *problem, good *state) (int, error) {
+	return c.limited(p, good, briefIterations)
+}
+
+// limited solves p with junction limits in so many iterations at most.
+func (c *climb) limited(p *problem, good *state, most int) (int, error) {
 	n, err := c.w.newton(c.ctx, p, most)
 	c.iterations += n
 	if err != nil {
@@ -46,8 +65,6 @@ const (
 	leastPseudo   = 1e-15 // S: a step so long is Newton's method itself
 	pseudoGrow    = 10.0
 	pseudoShrink  = 8.0
-	// pseudoIterations is the number of iterations after which a shorter step is cheaper than a longer search.
-	pseudoIterations = 50
 	// restShare is a movement beside the largest voltage below which the circuit is nearly at rest.
 	restShare = 1e-3
 )
@@ -61,15 +78,9 @@ func (c *climb) pseudo() error {
 	good.save(&c.w.eval)
 	p := c.base
 	p.anchor, p.shunt = good.x, firstPseudo
-	begun := false
-	for range continuationSteps {
-		var n int
-		var err error
-		if begun {
-			n, err = c.briefly(&p, &good, pseudoIterations)
-		} else {
-			n, err = c.attempt(&p, &good) // no length of the step spares the jump of the held nodes at its start
-		}
+	solve := c.attempt // at the start: no step is so short that it spares the held nodes their jump
+	for range c.steps() {
+		n, err := solve(&p, &good)
 		if c.ctx.Err() != nil {
 			return c.ctx.Err()
 		}
@@ -81,7 +92,7 @@ func (c *climb) pseudo() error {
 		}
 		calm := c.movement(good.x) <= restShare
 		good.save(&c.w.eval)
-		begun = true
+		solve = c.briefly
 		p.shunt /= pace(n, pseudoGrow)
 		if calm || p.shunt < leastPseudo {
 			bare := c.base
@@ -117,7 +128,7 @@ func (c *climb) sources() error {
 	good := c.s.newState()
 	at, step := 0.0, firstSources
 	p := c.base
-	for range continuationSteps {
+	for range c.steps() {
 		p.drive = math.Min(1, at+step) * c.base.drive
 		n, err := c.attempt(&p, &good)
 		if c.ctx.Err() != nil {
@@ -155,7 +166,7 @@ func (c *climb) shunts() error {
 	p := c.base
 	p.shunt = firstShunt
 	ratio := shuntRatio
-	for range continuationSteps {
+	for range c.steps() {
 		n, err := c.attempt(&p, &good)
 		if c.ctx.Err() != nil {
 			return c.ctx.Err()
