@@ -77,34 +77,41 @@ func (s *sums) add(d mna.Device, pins int, at []mna.Unknown, x []float64) {
 	}
 }
 
-// modelSums adds up the equations of a model at the solution x.
-func modelSums(m *model, x []float64) *sums {
-	s := newSums(len(x))
-	type placed struct {
-		device mna.Device
-		index  int
-	}
-	var all []placed
+// part is a device with its number in a system.
+type part struct {
+	device mna.Device
+	index  int
+}
+
+// parts lists the devices of a model.
+func (m *model) parts() []part {
+	var all []part
 	for i := range m.circuit.Elements {
 		if m.device[i] != held {
-			all = append(all, placed{m.circuit.Elements[i].Device, m.device[i]})
+			all = append(all, part{m.circuit.Elements[i].Device, m.device[i]})
 		}
 	}
 	for i := range m.circuit.Inputs {
 		in := &m.circuit.Inputs[i]
 		signals := pinSignals(in)
 		for pin, index := range m.inject[in.Name] {
-			all = append(all, placed{devices.NewCurrentSource(signals[pin]), index})
+			all = append(all, part{devices.NewCurrentSource(signals[pin]), index})
 		}
 	}
-	for _, p := range all {
-		_, inside := m.system.Unknowns(p.index)
+	return all
+}
+
+// sumsAt adds up the equations of a system of parts at the solution x.
+func sumsAt(system *mna.System, parts []part, x []float64) *sums {
+	s := newSums(len(x))
+	for _, p := range parts {
+		_, inside := system.Unknowns(p.index)
 		for _, u := range inside {
 			s.current[u] = isBranch(p.device)
 		}
 	}
-	for _, p := range all {
-		pins, inside := m.system.Unknowns(p.index)
+	for _, p := range parts {
+		pins, inside := system.Unknowns(p.index)
 		s.add(p.device, len(pins), append(pins, inside...), x)
 	}
 	return s
@@ -143,11 +150,9 @@ const (
 	offAmps  = 1e-9 // A, of a branch
 )
 
-// verifyBias sums the currents of every node at x and, in all but the largest circuits, takes one more step of Newton's method by dense elimination.
-func verifyBias(t *testing.T, m *model, x []float64) {
-	s := modelSums(m, x)
-	first := m.system.Held() + 1
-	for u := first; u < len(x); u++ {
+// verifyBalance sums the currents of every node at x.
+func verifyBalance(t testing.TB, system *mna.System, s *sums, x []float64) {
+	for u := system.Held() + 1; u < len(x); u++ {
 		slopes := 0.0
 		for col, g := range s.slopes[u] {
 			if !s.current[col] {
@@ -156,17 +161,18 @@ func verifyBias(t *testing.T, m *model, x []float64) {
 		}
 		allowed := sumShare*s.around[u] + sumRounding*slopes*s.volts[u] + leastLeft
 		if !(math.Abs(s.left[u]) <= allowed) {
-			require.Failf(t, "the currents do not add up", "%s: %g is left of %g", m.system.Name(mna.Unknown(u)), s.left[u], s.around[u])
+			require.Failf(t, "the currents do not add up", "%s: %g is left of %g", system.Name(mna.Unknown(u)), s.left[u], s.around[u])
 		}
-	}
-	if n := len(x) - first; n > 0 && n <= denseMost {
-		s.oneMoreStep(t, m, x, first)
 	}
 }
 
-// oneMoreStep wants Newton's method to have nothing left to do.
-func (s *sums) oneMoreStep(t *testing.T, m *model, x []float64, first int) {
+// oneMoreStep wants Newton's method by dense elimination to have nothing left to do, in all but the largest circuits.
+func oneMoreStep(t testing.TB, system *mna.System, s *sums, x []float64) {
+	first := system.Held() + 1
 	n := len(x) - first
+	if n == 0 || n > denseMost {
+		return
+	}
 	jacobian, residual := mat.NewDense(n, n, nil), mat.NewVecDense(n, nil)
 	for i := range n {
 		residual.SetVec(i, s.left[first+i])
@@ -184,7 +190,7 @@ func (s *sums) oneMoreStep(t *testing.T, m *model, x []float64, first int) {
 			floor = offAmps
 		}
 		if d := step.AtVec(i); !(math.Abs(d) <= offShare*math.Abs(x[first+i])+floor) {
-			require.Failf(t, "not at the solution", "%s: %g, %g off", m.system.Name(mna.Unknown(first+i)), x[first+i], d)
+			require.Failf(t, "not at the solution", "%s: %g, %g off", system.Name(mna.Unknown(first+i)), x[first+i], d)
 		}
 	}
 }

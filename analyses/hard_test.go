@@ -93,7 +93,9 @@ func TestHardCircuits(t *testing.T) {
 			require.NoError(t, err)
 			got[name] = finding{b.Rung, b.Iterations}
 			t.Log(got[name])
-			verifyBias(t, m, b.X)
+			s := sumsAt(m.system, m.parts(), b.X)
+			verifyBalance(t, m.system, s, b.X)
+			oneMoreStep(t, m.system, s, b.X)
 			if *update {
 				return
 			}

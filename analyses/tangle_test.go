@@ -1,4 +1,4 @@
-package analyses_test
+package analyses
 
 import (
 	"context"
@@ -19,13 +19,13 @@ type tangle struct {
 	r     *rand.Rand
 	b     *mna.Builder
 	node  []int // 0 is gnd
-	count int
+	parts []part
 	wild  bool // nodes may float, and currents find no way
 }
 
 // newTangle makes a network of a few dozen parts at most. Most nodes have a resistor to an earlier one, so that most networks have a
 // solution; some do not, and float.
-func newTangle(r *rand.Rand, wild bool) (*mna.System, error) {
+func newTangle(r *rand.Rand, wild bool) (*mna.System, []part, error) {
 	g := &tangle{r: r, b: mna.NewBuilder(), node: []int{0}, wild: wild}
 	rails := 1 + r.IntN(3)
 	size := rails + 2 + r.IntN(14)
@@ -33,7 +33,7 @@ func newTangle(r *rand.Rand, wild bool) (*mna.System, error) {
 		g.node = append(g.node, g.b.Node(fmt.Sprint("n", k)))
 		if k <= rails {
 			if err := g.b.Hold(g.node[k], devices.Constant(g.between(-15, 15))); err != nil {
-				return nil, err
+				return nil, nil, err
 			}
 		} else if !wild || r.IntN(8) > 0 {
 			g.add("R", devices.NewResistor(g.decades(1, 6)), g.node[k], g.node[r.IntN(k)])
@@ -42,7 +42,8 @@ func newTangle(r *rand.Rand, wild bool) (*mna.System, error) {
 	for range size + r.IntN(2*size) {
 		g.part()
 	}
-	return g.b.Build()
+	s, err := g.b.Build()
+	return s, g.parts, err
 }
 
 func (g *tangle) between(low, high float64) float64 { return low + (high-low)*g.r.Float64() }
@@ -50,8 +51,7 @@ func (g *tangle) decades(low, high float64) float64 { return math.Pow(10, g.betw
 func (g *tangle) any() int                          { return g.node[g.r.IntN(len(g.node))] }
 
 func (g *tangle) add(kind string, d mna.Device, nodes ...int) {
-	g.count++
-	g.b.Add(fmt.Sprint(kind, g.count), d, nodes...)
+	g.parts = append(g.parts, part{d, g.b.Add(fmt.Sprint(kind, len(g.parts)+1), d, nodes...)})
 }
 
 // part adds any part anywhere.
@@ -126,37 +126,68 @@ func (g *tangle) family(index int, nodes ...int) {
 	}
 }
 
-func TestTangleStatistics(t *testing.T) {
-	t.Run("tame", func(t *testing.T) { tangleStatistics(t, false) })
-	t.Run("wild", func(t *testing.T) { tangleStatistics(t, true) })
+// solveTangle solves a random network, verifies the answer and returns how it was found; nil if there is no unique solution. A wild network
+// may have no bias: some of its current sources lead nowhere but into a reversed junction.
+func solveTangle(t testing.TB, seed uint64, wild bool) *mna.Bias {
+	system, parts, err := newTangle(rand.New(rand.NewPCG(seed, 17)), wild)
+	var b *mna.Bias
+	if err == nil {
+		b, err = system.Bias(context.Background(), mna.BiasOptions{})
+	}
+	var singular *mna.SingularError
+	var lost *mna.NoConvergenceError
+	switch {
+	case errors.As(err, &singular):
+		require.NotEmpty(t, singular.Unknowns, "seed %d", seed)
+		return nil
+	case wild && errors.As(err, &lost):
+		require.NotEmpty(t, lost.Worst, "seed %d", seed)
+		return nil
+	}
+	require.NoError(t, err, "seed %d", seed)
+	s := sumsAt(system, parts, b.X)
+	verifyBalance(t, system, s, b.X)
+	if !wild {
+		oneMoreStep(t, system, s, b.X)
+	}
+	return b
 }
 
-func tangleStatistics(t *testing.T, wild bool) {
-	const n = 4000
-	rungs, failed, total, worst := map[string]int{}, 0, 0, 0
-	singular := 0
-	for seed := range uint64(n) {
-		s, err := newTangle(rand.New(rand.NewPCG(seed, 17)), wild)
-		var b *mna.Bias
-		if err == nil {
-			b, err = s.Bias(context.Background(), mna.BiasOptions{})
-		}
-		var sing *mna.SingularError
-		switch {
-		case err == nil:
+const (
+	tangles = 1000
+	// usualIterations bounds the iterations of a random network in the mean; 13.8 were measured over 3086 of them.
+	usualIterations = 18
+	// leastUsual is the share of the networks that Newton's method solves by itself; 97.7 % were measured.
+	leastUsual = 0.95
+)
+
+// TestTangles: every random network whose currents all find a way has a bias, found without a setting and mostly at once.
+func TestTangles(t *testing.T) {
+	rungs, iterations, found := map[string]int{}, 0, 0
+	for seed := range uint64(tangles) {
+		if b := solveTangle(t, seed, false); b != nil {
 			rungs[b.Rung]++
-			total += b.Iterations
-			worst = max(worst, b.Iterations)
-			if b.Iterations > 300 {
-				t.Logf("seed %d: %d %s", seed, b.Iterations, b.Rung)
-			}
-		case errors.As(err, &sing):
-			singular++
-		default:
-			failed++
-			t.Logf("seed %d: %v: %v", seed, err, errors.Unwrap(err))
+			iterations += b.Iterations
+			found++
 		}
 	}
-	t.Logf("%v mean %.1f worst %d singular %d failed %d", rungs, float64(total)/n, worst, singular, failed)
-	require.NotZero(t, total)
+	t.Logf("%d found, %v, %.1f iterations in the mean", found, rungs, float64(iterations)/float64(found))
+	require.Greater(t, found, tangles/2)
+	require.LessOrEqual(t, iterations, usualIterations*found)
+	require.GreaterOrEqual(t, float64(rungs[mna.RungNewton]), leastUsual*float64(found))
+}
+
+// TestWildTangles: whatever is thrown together, the answer adds up, or an error says what is wrong.
+func TestWildTangles(t *testing.T) {
+	for seed := range uint64(tangles) {
+		solveTangle(t, seed, true)
+	}
+}
+
+// FuzzTangle looks for networks that TestTangles and TestWildTangles do not reach.
+func FuzzTangle(f *testing.F) {
+	for seed := range uint64(8) {
+		f.Add(seed, seed%2 == 0)
+	}
+	f.Fuzz(func(t *testing.T, seed uint64, wild bool) { solveTangle(t, seed, wild) })
 }
