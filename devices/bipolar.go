@@ -135,13 +135,13 @@ type bipolar struct {
 	invBetaF, invBetaR           float64
 	invEarlyF, invEarlyR         float64 // 1/V
 	invKneeF, invKneeR           float64 // 1/A
+	knees                        bool    // one of them at least is not 0
 	base                         baseResistance
 	gE, gC                       float64 // S, 0 for none
 	layerE, layerC, layerX       depletion
 	layerS                       depletion
 	tauF, tauR                   float64
 	tauBias, tauCurr, invTauVolt float64
-	substrate                    bool
 }
 
 func newBipolar(v []float64, at Place, sign float64) (mna.Device, error) {
@@ -169,8 +169,8 @@ func newBipolar(v []float64, at Place, sign float64) (mna.Device, error) {
 		layerX: h.depletion((1-v[bSplitC])*v[bCapC], v[bPhiC], v[bGradC], v[bFcap], a),
 		layerS: h.depletion(v[bCapS], v[bPhiS], v[bGradS], v[bFcap], a),
 		tauF:   v[bTauF], tauR: v[bTauR], tauBias: v[bTauFbias], tauCurr: a * v[bTauFcurr], invTauVolt: 1 / (1.44 * v[bTauFvolt]),
-		substrate: v[bCapS] > 0,
 	}
+	q.knees = q.invKneeF > 0 || q.invKneeR > 0
 	if v[bRE] > 0 {
 		q.gE = a / v[bRE]
 	}
@@ -185,6 +185,7 @@ type baseResistance struct {
 	least, span float64 // ohm
 	invKnee     float64 // 1/A, 0: follows q_b
 	present     bool
+	varies      bool
 }
 
 func newBaseResistance(v []float64, area float64) baseResistance {
@@ -193,7 +194,8 @@ func newBaseResistance(v []float64, area float64) baseResistance {
 		least = v[bRB]
 	}
 	b := baseResistance{least: least / area, span: (v[bRB] - least) / area, present: v[bRB] > 0 || least > 0}
-	if k := v[bRBknee]; !math.IsNaN(k) && !math.IsInf(k, 0) {
+	b.varies = b.span != 0
+	if k := v[bRBknee]; b.varies && !math.IsNaN(k) && !math.IsInf(k, 0) {
 		b.invKnee = 1 / (area * k)
 	}
 	return b
@@ -229,14 +231,13 @@ func (b *baseResistance) ofCurrent(ib float64) (r, slope float64) {
 
 // core is the intrinsic transistor at its junction voltages: values and derivatives by v1 and v2.
 type core struct {
+	fi, fg, ri, rg float64 // I_F by v1, I_R by v2
+	share          float64 // 1/q_b
+	l1, l2         float64 // 1/V, derivatives of ln q_b
+
 	it, it1, it2 float64 // transport current
-	ib, ib1, ib2 float64 // base current
 	bc, bc2      float64 // part of the base current that comes from the collector
 	be, be1      float64 // part that goes to the emitter
-	rb, rb1, rb2 float64 // base resistance
-	// what the charges need
-	fi, fg, ri, rg float64
-	qb, qb1, qb2   float64
 }
 
 // guard keeps x from reaching zero: below floor it is floor^2/(2 floor - x), with the same value and slope there.
@@ -259,47 +260,42 @@ func (q *bipolar) at(v1, v2 float64) (c core) {
 	c.ri, c.rg = q.reverse.at(v2)
 	li, lg := q.leakE.at(v1)
 	mi, mg := q.leakC.at(v2)
-
-	room, slope := guard(1-v2*q.invEarlyF-v1*q.invEarlyR, earlyFloor)
-	q1 := 1 / room
-	q11, q12 := q1*q1*slope*q.invEarlyR, q1*q1*slope*q.invEarlyF
-	s, ds := guard(1+4*(c.fi*q.invKneeF+c.ri*q.invKneeR), kneeFloor)
-	root := math.Sqrt(s)
-	half := 0.5 * (1 + root)
-	dh := ds / root // d half / d q2
-	c.qb = q1 * half
-	c.qb1 = q11*half + q1*dh*c.fg*q.invKneeF
-	c.qb2 = q12*half + q1*dh*c.rg*q.invKneeR
-
-	inverse := 1 / c.qb
-	c.it = (c.fi - c.ri) * inverse
-	c.it1 = (c.fg - c.it*c.qb1) * inverse
-	c.it2 = (-c.rg - c.it*c.qb2) * inverse
-
 	c.be, c.be1 = c.fi*q.invBetaF+li, c.fg*q.invBetaF+lg
 	c.bc, c.bc2 = c.ri*q.invBetaR+mi, c.rg*q.invBetaR+mg
-	c.ib, c.ib1, c.ib2 = c.be+c.bc, c.be1, c.bc2
 
-	if q.base.present {
-		q.resist(&c)
-	}
+	q.modulate(&c, v1, v2)
+	c.it = (c.fi - c.ri) * c.share
+	c.it1 = c.fg*c.share - c.it*c.l1
+	c.it2 = -c.rg*c.share - c.it*c.l2
 	return c
 }
 
-// resist adds the base resistance.
-func (q *bipolar) resist(c *core) {
-	b := &q.base
-	switch {
-	case b.span == 0:
-		c.rb = b.least
-	case b.invKnee > 0:
-		r, slope := b.ofCurrent(c.ib)
-		c.rb, c.rb1, c.rb2 = r, slope*c.ib1, slope*c.ib2
-	default:
-		k := b.span / c.qb
-		c.rb = b.least + k
-		c.rb1, c.rb2 = -k*c.qb1/c.qb, -k*c.qb2/c.qb
+// modulate sets what the base charge q_b = (1 + sqrt(1 + 4 q2))/(2 (1 - v2/earlyF - v1/earlyR)) does.
+func (q *bipolar) modulate(c *core, v1, v2 float64) {
+	room, slope := guard(1-v2*q.invEarlyF-v1*q.invEarlyR, earlyFloor)
+	early := slope / room
+	c.share = room
+	c.l1, c.l2 = early*q.invEarlyR, early*q.invEarlyF
+	if !q.knees {
+		return
 	}
+	s, ds := guard(1+4*(c.fi*q.invKneeF+c.ri*q.invKneeR), kneeFloor)
+	root := math.Sqrt(s)
+	c.share = 2 * room / (1 + root)
+	high := 2 * ds / (root + s) // the derivative of ln q_b by q2
+	c.l1 += high * c.fg * q.invKneeF
+	c.l2 += high * c.rg * q.invKneeR
+}
+
+// resistance returns the base resistance and its derivatives by v1 and v2.
+func (q *bipolar) resistance(c *core) (r, r1, r2 float64) {
+	b := &q.base
+	if b.invKnee > 0 {
+		r, slope := b.ofCurrent(c.be + c.bc)
+		return r, slope * c.be1, slope * c.bc2
+	}
+	k := b.span * c.share
+	return b.least + k, -k * c.l1, -k * c.l2
 }
 
 // diffusion returns the forward charge tau I_F/q_b and its derivatives.
@@ -307,23 +303,30 @@ func (q *bipolar) diffusion(c *core, v2 float64) (charge, d1, d2 float64) {
 	if q.tauF == 0 {
 		return 0, 0, 0
 	}
-	tau, t1, t2 := 1.0, 0.0, 0.0
-	if q.tauBias > 0 {
-		share, ds := 1.0, 0.0
-		if q.tauCurr > 0 {
-			// I_F is never below -Is; the guard keeps the pole at -tauFcurr away if a part has Is beyond it.
-			sum, slope := guard(c.fi+q.tauCurr, q.tauCurr/2)
-			share = c.fi / sum
-			ds = (sum - c.fi*slope) / (sum * sum) * c.fg
-		}
-		x, y := expLinear(v2 * q.invTauVolt)
-		tau += q.tauBias * share * share * x
-		t1 = q.tauBias * 2 * share * ds * x
-		t2 = q.tauBias * share * share * y * q.invTauVolt
+	k := q.tauF * c.share
+	charge = k * c.fi
+	d1 = k*c.fg - charge*c.l1
+	d2 = -charge * c.l2
+	if q.tauBias == 0 {
+		return charge, d1, d2
 	}
-	k := q.tauF * c.fi / c.qb
-	charge = k * tau
-	d1 = q.tauF*tau*(c.fg-c.fi*c.qb1/c.qb)/c.qb + k*t1
-	d2 = -charge*c.qb2/c.qb + k*t2
-	return charge, d1, d2
+	tau, t1, t2 := q.slowing(c, v2)
+	return charge * tau, d1*tau + charge*t1, d2*tau + charge*t2
+}
+
+// slowing returns tau/tauF, which rises with the current and with v2, and its derivatives.
+func (q *bipolar) slowing(c *core, v2 float64) (tau, t1, t2 float64) {
+	share, slope := 1.0, 0.0
+	if q.tauCurr > 0 {
+		// I_F is never below -Is; the guard keeps the pole at -tauFcurr away if a part has Is beyond it.
+		sum, ds := guard(c.fi+q.tauCurr, q.tauCurr/2)
+		share = c.fi / sum
+		slope = (1 - share*ds) / sum * c.fg
+	}
+	x, dx := 1.0, 0.0
+	if q.invTauVolt > 0 {
+		x, dx = expLinear(v2 * q.invTauVolt)
+	}
+	k := q.tauBias * share
+	return 1 + k*share*x, 2 * k * slope * x, k * share * dx * q.invTauVolt
 }

@@ -44,10 +44,10 @@ func (q *bipolar) Bind(b mna.Binder) mna.Stamp {
 			s.rowB[i] = b.Slot(s.b, row)
 		}
 	}
-	if q.layerX.kind != noDepletion {
+	if q.layerX.present {
 		s.xc = newSquare(b, s.b, s.ci)
 	}
-	if q.substrate {
+	if q.layerS.present {
 		s.sub = newSquare(b, s.s, s.ci)
 	}
 	return s
@@ -89,8 +89,11 @@ func (s *bipolarStamp) Eval(e *mna.Eval) {
 	if s.gE > 0 {
 		conduct(e, s.e, s.ei, s.gE, &s.emitter)
 	}
-	if s.base.present {
+	switch {
+	case s.base.varies:
 		s.evalBase(e, &c, d1, d2)
+	case s.base.present:
+		conduct(e, s.b, s.bi, 1/s.base.least, &s.series)
 	}
 	if e.Dynamic {
 		s.evalCharge(e, &c, u1, u2, d1, d2)
@@ -115,10 +118,11 @@ func conduct(e *mna.Eval, a, b mna.Unknown, g float64, at *square) {
 
 // evalBase adds the base resistance, whose value depends on the junction voltages.
 func (s *bipolarStamp) evalBase(e *mna.Eval, c *core, d1, d2 float64) {
-	g := 1 / c.rb
+	r, r1, r2 := s.resistance(c)
+	g := 1 / r
 	v := e.X[s.b] - e.X[s.bi]
 	k := -v * g * g
-	i1, i2 := k*c.rb1, k*c.rb2
+	i1, i2 := k*r1, k*r2
 	i := g*v + i1*d1 + i2*d2
 	e.F[s.b] += i
 	e.F[s.bi] -= i
@@ -149,10 +153,10 @@ func (s *bipolarStamp) evalCharge(e *mna.Eval, c *core, u1, u2, d1, d2 float64) 
 	s.add(e.C, 0, ce+qd1, qd2+cc)
 	s.add(e.C, 2, -ce-qd1, -qd2)
 	s.add(e.C, 1, 0, -cc)
-	if s.layerX.kind != noDepletion {
+	if s.layerX.present {
 		s.store(e, s.b, &s.layerX, &s.xc)
 	}
-	if s.substrate {
+	if s.layerS.present {
 		s.store(e, s.s, &s.layerS, &s.sub)
 	}
 }
@@ -176,7 +180,7 @@ func (s *bipolarStamp) Operating(e *mna.Eval) []mna.Quantity {
 	_, cx := s.layerX.at(s.sign * (e.X[s.b] - e.X[s.ci]))
 	// At constant v_ce both junction voltages move together; at constant v1 a rise of v_ce lowers v2.
 	gm := c.it1 + c.it2 - c.bc2
-	gb := c.ib1 + c.ib2
+	gb := c.be1 + c.bc2
 	cpi, cmu := ce+qd1, cc+s.tauR*c.rg+cx
 	ic, ib := e.F[s.c], e.F[s.b]
 	return []mna.Quantity{

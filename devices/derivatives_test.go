@@ -52,10 +52,15 @@ func bind(d mna.Device, pins int) *bound {
 	return &bound{b, s, int(b.next)}
 }
 
+// newEval returns an evaluation at x that wants everything.
+func (b *bound) newEval(x []float64) *mna.Eval {
+	return &mna.Eval{X: x, F: make([]float64, b.n), Q: make([]float64, b.n), G: make([]float64, len(b.rows)), C: make([]float64, len(b.rows)),
+		Dynamic: true, Drive: 1, Junctions: make([]float64, b.junctions)}
+}
+
 // eval evaluates at x and returns f, q and the dense G and C.
 func (b *bound) eval(x []float64) (f, q []float64, g, c [][]float64) {
-	e := &mna.Eval{X: x, F: make([]float64, b.n), Q: make([]float64, b.n), G: make([]float64, len(b.rows)), C: make([]float64, len(b.rows)),
-		Dynamic: true, Drive: 1, Junctions: make([]float64, b.junctions)}
+	e := b.newEval(x)
 	b.stamp.Eval(e)
 	g, c = make([][]float64, b.n), make([][]float64, b.n)
 	for i := range g {
@@ -169,7 +174,7 @@ func baseCurrentTurns(b *bound, x []float64) bool {
 	v1, v2 := s.sign*(x[s.bi]-x[s.ei]), s.sign*(x[s.bi]-x[s.ci])
 	const reach = 3 * differenceStep
 	low, high := s.at(v1-reach, v2-reach), s.at(v1+reach, v2+reach)
-	return low.ib <= 0 && high.ib >= 0
+	return low.be+low.bc <= 0 && high.be+high.bc >= 0
 }
 
 func TestDerivativesOfTheDiode(t *testing.T) {

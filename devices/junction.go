@@ -12,7 +12,7 @@ func expLinear(x float64) (value, slope float64) {
 	if x > exponentLimit {
 		return limitExp * (1 + x - exponentLimit), limitExp
 	}
-	value = math.Exp(x)
+	value = exp(x)
 	return value, value
 }
 
@@ -26,7 +26,8 @@ type exponential struct {
 }
 
 func newExponential(is, nVt float64) exponential {
-	return exponential{is: is, nVt: nVt, inverse: 1 / nVt, gain: is / nVt, knee: nVt * math.Log(nVt/(math.Sqrt2*is))}
+	knee := nVt * math.Log(nVt/(math.Sqrt2*is))
+	return exponential{is: is, nVt: nVt, inverse: 1 / nVt, gain: is / nVt, knee: knee}
 }
 
 // at returns the current in A and its slope in S at v volts.
@@ -66,65 +67,57 @@ func (x *exponential) limit(v, last float64) (float64, bool) {
 
 // depletion is the charge of a junction's depletion layer.
 type depletion struct {
-	c     float64 // F at 0 V
-	phi   float64 // V
-	grade float64
-	knee  float64 // V: above it the capacitance goes on along its tangent
-	// of the tangent
-	kneeCharge, kneeCap, kneeSlope float64
-	kind                           depletionKind
+	c       float64 // F at 0 V
+	inverse float64 // 1/V, of the built-in potential
+	grade   float64
+	span    float64 // V: of the charge below the knee
+	tangent tangent // above the knee; everywhere if the capacitance is constant or there is none
+	present bool
 }
 
-type depletionKind uint8
-
-const (
-	noDepletion depletionKind = iota
-	constantDepletion
-	rootDepletion // grading 1/2
-	anyDepletion
-)
+// tangent is a charge whose capacitance grows linearly above a voltage.
+type tangent struct {
+	knee          float64 // V, from which on it holds
+	origin        float64 // V, at which it has the following
+	charge        float64 // C
+	cap           float64 // F
+	halfCapGrowth float64 // F/V
+}
 
 func newDepletion(c, phi, grade, fcap float64) depletion {
-	d := depletion{c: c, phi: phi, grade: grade, kind: anyDepletion}
-	switch {
-	case c == 0:
-		d.kind = noDepletion
+	d := depletion{c: c, inverse: 1 / phi, grade: grade, span: phi / (1 - grade), present: c != 0}
+	if c == 0 || grade == 0 {
+		d.tangent = tangent{knee: -inf, cap: c}
 		return d
-	case grade == 0:
-		d.kind = constantDepletion
-		return d
-	case grade == 0.5:
-		d.kind = rootDepletion
 	}
-	d.knee = fcap * phi
-	d.kneeCharge, d.kneeCap = d.below(d.knee)
-	d.kneeSlope = d.kneeCap * grade / (phi * (1 - fcap))
+	knee := fcap * phi
+	q, slope := d.below(knee)
+	d.tangent = tangent{knee: knee, origin: knee, charge: q, cap: slope, halfCapGrowth: slope * grade / (phi * (1 - fcap)) / 2}
 	return d
 }
 
-// below returns charge and capacitance below the knee.
+// below returns charge and capacitance below the knee: both from one power, c (1 - v/phi)^-grade.
 func (d *depletion) below(v float64) (q, c float64) {
-	room := 1 - v/d.phi
-	if d.kind == rootDepletion {
-		root := math.Sqrt(room)
-		return 2 * d.c * d.phi * (1 - root), d.c / root
+	room := 1 - v*d.inverse
+	if d.grade == 0.5 {
+		c = d.c / math.Sqrt(room)
+	} else {
+		c = d.c * exp(-d.grade*logOf(room))
 	}
-	c = d.c * math.Exp(-d.grade*math.Log(room))
-	return d.phi / (1 - d.grade) * (d.c - c*room), c
+	return d.span * (d.c - c*room), c
 }
 
 // at returns the charge in C and the capacitance in F at v volts.
 func (d *depletion) at(v float64) (q, c float64) {
-	switch {
-	case d.kind == noDepletion:
-		return 0, 0
-	case d.kind == constantDepletion:
-		return d.c * v, d.c
-	case v < d.knee:
+	if v < d.tangent.knee {
 		return d.below(v)
 	}
-	x := v - d.knee
-	return d.kneeCharge + x*(d.kneeCap+x*d.kneeSlope/2), d.kneeCap + x*d.kneeSlope
+	return d.tangent.at(v)
+}
+
+func (t *tangent) at(v float64) (q, c float64) {
+	x := v - t.origin
+	return t.charge + x*(t.cap+x*t.halfCapGrowth), t.cap + 2*x*t.halfCapGrowth
 }
 
 // thermal holds the temperatures of a device and the laws that scale its parameters.

@@ -93,9 +93,10 @@ func TestBipolarAgainstReference(t *testing.T) {
 			// IC and IB are differences of an exponential and 1, times the saturation currents.
 			floor := 1e-15 * (q.forward.is + q.reverse.is + q.leakE.is + q.leakC.is)
 			compare(t, name+"I_C", p.IC, v.it-v.bc, floor+1e-14*math.Abs(v.bc))
-			compare(t, name+"I_B", p.IB, v.ib, floor+1e-14*(math.Abs(v.be)+math.Abs(v.bc)))
-			compare(t, name+"q_b", p.Qb, v.qb, 0)
-			compare(t, name+"r_bb", p.Rbb, v.rb, 0)
+			compare(t, name+"I_B", p.IB, v.be+v.bc, floor+1e-14*(math.Abs(v.be)+math.Abs(v.bc)))
+			compare(t, name+"q_b", p.Qb, 1/v.share, 0)
+			rb, _, _ := q.resistance(&v)
+			compare(t, name+"r_bb", p.Rbb, rb, 0)
 			qe, _ := q.layerE.at(p.V1)
 			qd, _, _ := q.diffusion(&v, p.V2)
 			compare(t, name+"Q_E", p.QE, qe+qd, 1e-14*(math.Abs(qe)+math.Abs(qd)))
