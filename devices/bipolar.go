@@ -186,6 +186,7 @@ type baseResistance struct {
 	invKnee     float64 // 1/A, 0: follows q_b
 	present     bool
 	varies      bool
+	conductance float64 // S, if it does not vary
 }
 
 func newBaseResistance(v []float64, area float64) baseResistance {
@@ -194,7 +195,7 @@ func newBaseResistance(v []float64, area float64) baseResistance {
 		least = v[bRB]
 	}
 	b := baseResistance{least: least / area, span: (v[bRB] - least) / area, present: v[bRB] > 0 || least > 0}
-	b.varies = b.span != 0
+	b.varies, b.conductance = b.span != 0, 1/b.least
 	if k := v[bRBknee]; b.varies && !math.IsNaN(k) && !math.IsInf(k, 0) {
 		b.invKnee = 1 / (area * k)
 	}
@@ -254,8 +255,8 @@ const (
 	kneeFloor  = 1e-3 // of 1 + 4 q2, which only saturation currents beyond the knee could bring below
 )
 
-// at evaluates the intrinsic transistor.
-func (q *bipolar) at(v1, v2 float64) (c core) {
+// at evaluates the intrinsic transistor into c.
+func (q *bipolar) at(c *core, v1, v2 float64) {
 	c.fi, c.fg = q.forward.at(v1)
 	c.ri, c.rg = q.reverse.at(v2)
 	li, lg := q.leakE.at(v1)
@@ -263,11 +264,10 @@ func (q *bipolar) at(v1, v2 float64) (c core) {
 	c.be, c.be1 = c.fi*q.invBetaF+li, c.fg*q.invBetaF+lg
 	c.bc, c.bc2 = c.ri*q.invBetaR+mi, c.rg*q.invBetaR+mg
 
-	q.modulate(&c, v1, v2)
+	q.modulate(c, v1, v2)
 	c.it = (c.fi - c.ri) * c.share
 	c.it1 = c.fg*c.share - c.it*c.l1
 	c.it2 = -c.rg*c.share - c.it*c.l2
-	return c
 }
 
 // modulate sets what the base charge q_b = (1 + sqrt(1 + 4 q2))/(2 (1 - v2/earlyF - v1/earlyR)) does.

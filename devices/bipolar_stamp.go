@@ -71,41 +71,49 @@ func (s *bipolarStamp) junctions(e *mna.Eval) (u1, u2, v1, v2 float64) {
 func (s *bipolarStamp) Eval(e *mna.Eval) {
 	u1, u2, v1, v2 := s.junctions(e)
 	d1, d2 := v1-u1, v2-u2
-	c := s.at(u1, u2)
-	it := c.it + c.it1*d1 + c.it2*d2
-	be := c.be + c.be1*d1
-	bc := c.bc + c.bc2*d2
-	sign := s.sign
-	e.F[s.bi] += sign * (be + bc)
-	e.F[s.ci] += sign * (it - bc)
-	e.F[s.ei] -= sign * (it + be)
-	// dI/dv_bi = d1 + d2, dI/dv_ei = -d1, dI/dv_ci = -d2 of each current.
-	s.add(e.G, 0, c.be1, c.bc2)
-	s.add(e.G, 1, c.it1, c.it2-c.bc2)
-	s.add(e.G, 2, -c.it1-c.be1, -c.it2)
+	var c core
+	s.at(&c, u1, u2)
+	base := branched{c.be + c.bc, c.be1, c.bc2}.along(d1, d2)
+	collector := branched{c.it - c.bc, c.it1, c.it2 - c.bc2}.along(d1, d2)
+	emitter := branched{-c.it - c.be, -c.it1 - c.be1, -c.it2}.along(d1, d2)
+	switch {
+	case s.base.varies:
+		i1, i2 := s.evalBase(e, &c, d1, d2)
+		base.by1 -= i1
+		base.by2 -= i2
+	case s.base.present:
+		conduct(e, s.b, s.bi, s.base.conductance, &s.series)
+	}
+	f, g := e.F, e.G
+	s.add(f, g, s.bi, 0, base)
+	s.add(f, g, s.ci, 1, collector)
+	s.add(f, g, s.ei, 2, emitter)
 	if s.gC > 0 {
 		conduct(e, s.c, s.ci, s.gC, &s.collector)
 	}
 	if s.gE > 0 {
 		conduct(e, s.e, s.ei, s.gE, &s.emitter)
 	}
-	switch {
-	case s.base.varies:
-		s.evalBase(e, &c, d1, d2)
-	case s.base.present:
-		conduct(e, s.b, s.bi, 1/s.base.least, &s.series)
-	}
 	if e.Dynamic {
 		s.evalCharge(e, &c, u1, u2, d1, d2)
 	}
 }
 
-// add adds to row r the derivatives of a current by the junction voltages.
-func (s *bipolarStamp) add(m []float64, r int, by1, by2 float64) {
+// branched is a current or charge that the junction voltages control, with its derivatives by them.
+type branched struct{ value, by1, by2 float64 }
+
+// along returns b moved linearly by d1 and d2.
+func (b branched) along(d1, d2 float64) branched {
+	return branched{b.value + b.by1*d1 + b.by2*d2, b.by1, b.by2}
+}
+
+// add adds b to an unknown inside and to row r of rows: db/dv_bi = by1 + by2, db/dv_ei = -by1, db/dv_ci = -by2.
+func (s *bipolarStamp) add(values, slopes []float64, to mna.Unknown, r int, b branched) {
 	row := &s.rows[r]
-	m[row[0]] += by1 + by2
-	m[row[1]] -= by2
-	m[row[2]] -= by1
+	values[to] += s.sign * b.value
+	slopes[row[0]] += b.by1 + b.by2
+	slopes[row[1]] -= b.by2
+	slopes[row[2]] -= b.by1
 }
 
 // conduct adds a conductance between two unknowns.
@@ -116,43 +124,38 @@ func conduct(e *mna.Eval, a, b mna.Unknown, g float64, at *square) {
 	at.add(e.G, g)
 }
 
-// evalBase adds the base resistance, whose value depends on the junction voltages.
-func (s *bipolarStamp) evalBase(e *mna.Eval, c *core, d1, d2 float64) {
+// evalBase adds a base resistance that depends on the junction voltages. It returns the derivatives of its current by them, which the row of
+// the internal base still lacks.
+func (s *bipolarStamp) evalBase(e *mna.Eval, c *core, d1, d2 float64) (i1, i2 float64) {
 	r, r1, r2 := s.resistance(c)
 	g := 1 / r
 	v := e.X[s.b] - e.X[s.bi]
 	k := -v * g * g
-	i1, i2 := k*r1, k*r2
+	i1, i2 = k*r1, k*r2
 	i := g*v + i1*d1 + i2*d2
 	e.F[s.b] += i
 	e.F[s.bi] -= i
 	s.series.add(e.G, g)
-	if i1 == 0 && i2 == 0 {
-		return
-	}
 	i1, i2 = s.sign*i1, s.sign*i2
 	e.G[s.rowB[0]] += i1 + i2
 	e.G[s.rowB[1]] -= i2
 	e.G[s.rowB[2]] -= i1
-	s.add(e.G, 0, -i1, -i2)
+	return i1, i2
 }
 
 // evalCharge adds the charges.
 func (s *bipolarStamp) evalCharge(e *mna.Eval, c *core, u1, u2, d1, d2 float64) {
-	sign := s.sign
 	qe, ce := s.layerE.at(u1)
 	qd, qd1, qd2 := s.diffusion(c, u2)
-	qe += qd + (ce+qd1)*d1 + qd2*d2
 	qc, cc := s.layerC.at(u2)
+	qe += qd
+	ce += qd1
 	qc += s.tauR * c.ri
 	cc += s.tauR * c.rg
-	qc += cc * d2
-	e.Q[s.bi] += sign * (qe + qc)
-	e.Q[s.ei] -= sign * qe
-	e.Q[s.ci] -= sign * qc
-	s.add(e.C, 0, ce+qd1, qd2+cc)
-	s.add(e.C, 2, -ce-qd1, -qd2)
-	s.add(e.C, 1, 0, -cc)
+	q, m := e.Q, e.C
+	s.add(q, m, s.bi, 0, branched{qe + qc, ce, qd2 + cc}.along(d1, d2))
+	s.add(q, m, s.ci, 1, branched{-qc, 0, -cc}.along(d1, d2))
+	s.add(q, m, s.ei, 2, branched{-qe, -ce, -qd2}.along(d1, d2))
 	if s.layerX.present {
 		s.store(e, s.b, &s.layerX, &s.xc)
 	}
@@ -173,7 +176,8 @@ func (s *bipolarStamp) store(e *mna.Eval, from mna.Unknown, layer *depletion, at
 func (s *bipolarStamp) Operating(e *mna.Eval) []mna.Quantity {
 	v1 := s.sign * (e.X[s.bi] - e.X[s.ei])
 	v2 := s.sign * (e.X[s.bi] - e.X[s.ci])
-	c := s.at(v1, v2)
+	var c core
+	s.at(&c, v1, v2)
 	_, ce := s.layerE.at(v1)
 	_, cc := s.layerC.at(v2)
 	_, qd1, _ := s.diffusion(&c, v2)

@@ -173,7 +173,9 @@ func baseCurrentTurns(b *bound, x []float64) bool {
 	}
 	v1, v2 := s.sign*(x[s.bi]-x[s.ei]), s.sign*(x[s.bi]-x[s.ci])
 	const reach = 3 * differenceStep
-	low, high := s.at(v1-reach, v2-reach), s.at(v1+reach, v2+reach)
+	var low, high core
+	s.at(&low, v1-reach, v2-reach)
+	s.at(&high, v1+reach, v2+reach)
 	return low.be+low.bc <= 0 && high.be+high.bc >= 0
 }
 

@@ -89,7 +89,8 @@ func TestBipolarAgainstReference(t *testing.T) {
 		q := made(t, c.Family, c.Parameters, c.Temperature, c.Area).(*bipolar)
 		for k, p := range c.Points {
 			name := fmt.Sprintf("%s, point %d: ", c.Case, k)
-			v := q.at(p.V1, p.V2)
+			var v core
+			q.at(&v, p.V1, p.V2)
 			// IC and IB are differences of an exponential and 1, times the saturation currents.
 			floor := 1e-15 * (q.forward.is + q.reverse.is + q.leakE.is + q.leakC.is)
 			compare(t, name+"I_C", p.IC, v.it-v.bc, floor+1e-14*math.Abs(v.bc))
