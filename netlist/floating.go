@@ -10,7 +10,7 @@ import (
 
 // island is a group of nodes that direct current cannot leave: what joins it to the rest.
 type island struct {
-	first      int // its first node
+	first      int // its first node that more than one thing touches; a lonely node is reported as such
 	capacitors cut
 	sources    cut
 }
@@ -25,7 +25,10 @@ type cut struct {
 const namedMost = 6
 
 func (c *cut) add(name string) {
-	if c.count++; len(c.names) < namedMost && !slices.Contains(c.names, name) {
+	if slices.Contains(c.names, name) {
+		return // both pins of an input
+	}
+	if c.count++; len(c.names) < namedMost {
 		c.names = append(c.names, name)
 	}
 }
@@ -51,7 +54,7 @@ func (e *elaborator) floating(stiff []edge, setUp string) {
 	}
 	islands := map[int]*island{}
 	for n := 1; n < len(c.Nodes); n++ {
-		if g := sets.find(n); g != 0 && islands[g] == nil {
+		if g := sets.find(n); g != 0 && islands[g] == nil && e.degree[n] >= 2 {
 			islands[g] = &island{first: n}
 		}
 	}
@@ -60,7 +63,7 @@ func (e *elaborator) floating(stiff []edge, setUp string) {
 	}
 	e.cuts(sets, islands)
 	for n := 1; n < len(c.Nodes); n++ {
-		if x := islands[sets.find(n)]; x != nil && x.first == n && e.degree[n] >= 2 {
+		if x := islands[sets.find(n)]; x != nil && x.first == n {
 			e.reportIsland(x, setUp)
 		}
 	}

@@ -95,32 +95,49 @@ func (e *elaborator) stiff() []edge {
 // witnessed bounds the loops whose members are sought: each costs a search.
 const witnessed = 100
 
-// loops reports each source or inductor that closes a loop with others, and the shortest such loop.
+// loops reports the independent loops of sources and inductors, as short as they can be, each where the last of its members is written.
 func (e *elaborator) loops(stiff []edge, setUp string) {
-	sets := newUnion(len(e.circuit.Nodes))
-	var near [][]int32 // edges at each node
-	found := 0
-	for i, x := range stiff {
-		if sets.join(x.a, x.b) {
-			continue
-		}
+	for _, x := range stiff {
 		if x.a == x.b {
 			e.fail(CodeLoop, x.at, "both ends of %s are at %s", x.name, nodeText(e.circuit.Nodes[x.a]))
-			continue
 		}
-		names := []string{x.name}
-		if found++; found <= witnessed {
-			if near == nil {
-				near = adjacent(stiff, len(e.circuit.Nodes))
-			}
-			for _, j := range shortest(stiff, near, i) {
-				if name := stiff[j].name; !slices.Contains(names, name) {
-					names = append(names, name)
-				}
-			}
-		}
-		e.fail(CodeLoop, x.at, "%s%s: nothing limits the current in a loop of voltage sources and inductors", loopText(names), setUp)
 	}
+	g, beyond := newRing(stiff, len(e.circuit.Nodes), witnessed)
+	closing := map[int]bool{}
+	for _, loop := range g.loops() {
+		last := lastOf(loop, closing)
+		closing[loop[last]] = true
+		loop = append(slices.Clone(loop[last:]), loop[:last]...)
+		if others := loop[1:]; others[0] > others[len(others)-1] {
+			slices.Reverse(others) // that which is written first comes first
+		}
+		e.reportLoop(stiff, loop, setUp)
+	}
+	for _, i := range beyond {
+		e.reportLoop(stiff, []int{i}, setUp)
+	}
+}
+
+// lastOf returns the place of the last-written member of a loop that has not been told to close another one.
+func lastOf(loop []int, closing map[int]bool) int {
+	last := -1
+	for k, i := range loop {
+		if !closing[i] && (last < 0 || i > loop[last]) {
+			last = k
+		}
+	}
+	return max(last, 0)
+}
+
+// reportLoop names a loop of edges, that which closes it first.
+func (e *elaborator) reportLoop(stiff []edge, loop []int, setUp string) {
+	var names []string
+	for _, i := range loop {
+		if name := stiff[i].name; !slices.Contains(names, name) {
+			names = append(names, name)
+		}
+	}
+	e.fail(CodeLoop, stiff[loop[0]].at, "%s%s: nothing limits the current in a loop of voltage sources and inductors", loopText(names), setUp)
 }
 
 func loopText(names []string) string {
@@ -131,46 +148,6 @@ func loopText(names []string) string {
 		return names[0] + " lies across " + names[1]
 	}
 	return names[0] + " closes a loop with " + strings.Join(names[1:], ", ")
-}
-
-// adjacent lists the edges at each node.
-func adjacent(edges []edge, nodes int) [][]int32 {
-	near := make([][]int32, nodes)
-	for i, x := range edges {
-		near[x.a] = append(near[x.a], int32(i))
-		near[x.b] = append(near[x.b], int32(i))
-	}
-	return near
-}
-
-// shortest finds the fewest edges that join the ends of edge k without it, breadth first.
-func shortest(edges []edge, near [][]int32, k int) []int {
-	from, to := edges[k].a, edges[k].b
-	came := map[int]int{from: -1}
-	for queue := []int{from}; len(queue) > 0; queue = queue[1:] {
-		n := queue[0]
-		if n == to {
-			break
-		}
-		for _, i := range near[n] {
-			m := edges[i].a + edges[i].b - n
-			if _, seen := came[m]; !seen && int(i) != k {
-				came[m] = int(i)
-				queue = append(queue, m)
-			}
-		}
-	}
-	var path []int
-	for n := to; n != from; {
-		i, ok := came[n]
-		if !ok {
-			return nil
-		}
-		path = append(path, i)
-		n = edges[i].a + edges[i].b - n
-	}
-	slices.Reverse(path)
-	return path
 }
 
 // union is a forest of sets of nodes (Tarjan, Efficiency of a good but not linear set union algorithm, J. ACM 22, 1975; paths are halved).
