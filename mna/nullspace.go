@@ -22,7 +22,6 @@ func (w *workspace) undetermined() error {
 	s := w.sys
 	v, err := w.freeDirection()
 	if err != nil {
-		println(err.Error())
 		return s.singular(false)
 	}
 	largest := [2]float64{}
