@@ -3,6 +3,7 @@ package analyses
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"poise/mna"
 	"poise/netlist"
@@ -26,6 +27,7 @@ type recording struct {
 	knots    []float64 // s, of the pieces that are kept
 	broken   []int     // those of them that no cubic fits
 	begun    float64   // s, start of the first piece; NaN before
+	needs    []mna.Unknown
 	cutter
 }
 
@@ -147,7 +149,21 @@ func (r *recording) begin(start float64) {
 	if r.keeps {
 		r.knots = append(r.knots, start)
 	}
+	r.needs = r.unknowns()
 	r.cutter = newCutter(len(r.list), r.model.system.Size(), r.accuracy)
+}
+
+// unknowns returns those that the taps read, each once.
+func (r *recording) unknowns() []mna.Unknown {
+	var list []mna.Unknown
+	for _, c := range r.list {
+		list = append(list, c.tap.needs()...)
+	}
+	for _, c := range r.words {
+		list = append(list, c.tap.needs()...)
+	}
+	slices.Sort(list)
+	return slices.Compact(list)
 }
 
 // look reads all columns at a time t in s of a step into a slot of their taps.
@@ -157,7 +173,7 @@ func (r *recording) look(step *mna.Step, t float64, slot int) error {
 		// A device's own signal is read as the step sees it: before a jump at its end.
 		x, at = step.End(), math.Nextafter(t, math.Inf(-1))
 	} else {
-		step.At(t, x)
+		step.Values(t, r.needs, x)
 	}
 	for _, c := range r.list {
 		if err := c.tap.load(slot, x, at); err != nil {

@@ -14,6 +14,8 @@ import (
 type tap interface {
 	// rest returns the quantity at a quiescent solution.
 	rest(x []float64) (float64, error)
+	// needs returns the unknowns that load reads.
+	needs() []mna.Unknown
 	// load reads a point, the solution x at t seconds, into a slot.
 	load(slot int, x []float64, t float64) error
 	// read fills out with the quantity at four equally spaced points over h seconds, which have been loaded. It returns how
@@ -84,6 +86,8 @@ func (m *model) voltsTap(plus, minus string) (tap, error) {
 }
 
 func (v *voltsTap) rest(x []float64) (float64, error) { return x[v.plus] - x[v.minus], nil }
+
+func (v *voltsTap) needs() []mna.Unknown { return []mna.Unknown{v.plus, v.minus} }
 
 func (v *voltsTap) load(slot int, x []float64, _ float64) error {
 	v.volts[slot] = x[v.plus] - x[v.minus]
@@ -160,6 +164,13 @@ func (c *currentTap) rest(x []float64) (float64, error) {
 	return c.sign * sum, nil
 }
 
+func (c *currentTap) needs() (list []mna.Unknown) {
+	for _, p := range c.probes {
+		list = append(list, p.Unknowns()...)
+	}
+	return list
+}
+
 func (c *currentTap) load(slot int, x []float64, t float64) error {
 	amps, charge, grossAmps, grossCharge := 0.0, 0.0, 0.0, 0.0
 	for i, p := range c.probes {
@@ -221,6 +232,14 @@ func (w *wattsTap) rest(x []float64) (float64, error) {
 	return sum, nil
 }
 
+func (w *wattsTap) needs() []mna.Unknown {
+	list := slices.Clone(w.pins)
+	for _, a := range w.amps {
+		list = append(list, a.needs()...)
+	}
+	return list
+}
+
 func (w *wattsTap) load(slot int, x []float64, t float64) error {
 	for i, u := range w.pins {
 		w.volts[i][slot] = x[u]
@@ -276,6 +295,8 @@ func (o *operatingTap) rest(x []float64) (float64, error) {
 	q, err := o.at(x, 0)
 	return q.Value, err
 }
+
+func (o *operatingTap) needs() []mna.Unknown { return o.probe.Unknowns() }
 
 func (o *operatingTap) load(slot int, x []float64, t float64) error {
 	q, err := o.at(x, t)

@@ -517,27 +517,29 @@ func (m *ndf) append(p *point) {
 	copy(m.newest.q, p.q)
 }
 
-// interpolate fills x with the polynomial through the end of the last step and as many points before it as its order has.
-func (m *ndf) interpolate(t float64, x []float64) {
+// interpolate takes the polynomial through the end of the last step and as many points before it as its order has.
+func (m *ndf) interpolate(t float64, x []float64, unknowns []Unknown) {
 	switch m.last {
 	case byStarter:
-		m.starter.interpolate(t, x)
+		m.starter.interpolate(t, x, unknowns)
 		return
 	case afterJump:
-		blend(x, t, &m.newest, &m.attempted)
+		blend(x, unknowns, t, &m.newest, &m.attempted)
 		return
 	}
-	var reach [ndfMost + 1]float64
-	reach[0] = 1
+	var reach [ndfMost]float64
+	product := 1.0
 	for j := range m.last {
-		reach[j+1] = reach[j] * (t - m.times[j])
+		product *= t - m.times[j]
+		reach[j] = product
 	}
-	for i := range x {
-		d := &m.x[i]
+	ahead := reach[:m.last]
+	for _, u := range unknowns {
+		d := &m.x[u]
 		v := d[0]
-		for j := 1; j <= m.last; j++ {
-			v += reach[j] * d[j]
+		for j, w := range ahead {
+			v += w * d[j+1]
 		}
-		x[i] = v
+		x[u] = v
 	}
 }

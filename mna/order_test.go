@@ -60,7 +60,7 @@ func (c marched) march(t testing.TB, s *System, o TransientOptions, u Unknown, s
 	r := c.begin(t, s, o, h, exact)
 	x, want, begun := make([]float64, s.Size()), make([]float64, s.Size()), r.t
 	miss := func(at float64) float64 {
-		r.method.interpolate(at, x)
+		r.method.interpolate(at, x, r.free)
 		exact(at, want)
 		return math.Abs(x[u] - want[u])
 	}
@@ -238,7 +238,7 @@ func TestNoAllocations(t *testing.T) {
 			panic(err)
 		}
 		r.widen(r.method.end().x)
-		r.method.interpolate(r.t, x)
+		r.method.interpolate(r.t, x, r.free)
 	}), "a step")
 }
 

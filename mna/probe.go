@@ -44,6 +44,9 @@ func (b *probeBinding) Internal(string) Unknown {
 
 func (b *probeBinding) Branch(name string) Unknown { return b.Internal(name) }
 
+// Unknowns returns the unknowns of the system that a load reads. They must not be changed.
+func (p *Probe) Unknowns() []Unknown { return p.from }
+
 // Load evaluates the device at a solution x of the system and time t in s.
 func (p *Probe) Load(x []float64, t float64) {
 	for i, u := range p.from {

@@ -53,3 +53,13 @@ func (s *System) hold(x []float64, t, drive float64) {
 		x[i+1] = drive * signal.At(t)
 	}
 }
+
+// holdOne writes the voltage of a node at time t in s if it is held or ground.
+func (s *System) holdOne(u Unknown, x []float64, t float64) {
+	switch {
+	case u == Ground:
+		x[u] = 0
+	case int(u) <= len(s.held):
+		x[u] = s.held[u-1].At(t)
+	}
+}

@@ -91,10 +91,18 @@ type Step struct {
 }
 
 // At fills x, of the system's size, with the solution at t seconds, within the step: held nodes exactly from their signals, the others by
-// the method's own interpolant, a polynomial of degree 3 at most. At a jump of a signal T0 is just after it and T1 just before.
+// the method's own interpolant, a polynomial of degree 5 at most. At a jump of a signal T0 is just after it and T1 just before.
 func (p *Step) At(t float64, x []float64) {
-	p.r.method.interpolate(t, x)
+	p.r.method.interpolate(t, x, p.r.free)
 	p.r.s.hold(x, p.r.inside(t), 1)
+}
+
+// Values is [Step.At] for some unknowns: it fills x, of the system's size, at those alone.
+func (p *Step) Values(t float64, unknowns []Unknown, x []float64) {
+	p.r.method.interpolate(t, x, unknowns)
+	for _, u := range unknowns {
+		p.r.s.holdOne(u, x, p.r.inside(t))
+	}
 }
 
 // End returns the solution at T1, all unknowns. It must not be changed.
@@ -144,6 +152,7 @@ type integration struct {
 	log    *slog.Logger
 	stats  TransientStats
 	method method
+	free   []Unknown // all free unknowns
 	*resolution
 
 	t      float64 // s, end of the last accepted step; after a restart the time of the consistent point, just after the corner
@@ -172,8 +181,8 @@ type method interface {
 	accept()
 	// end returns the point at the end of the last step.
 	end() *point
-	// interpolate fills the free unknowns of x at a time within the last step, in s.
-	interpolate(t float64, x []float64)
+	// interpolate fills some of the free unknowns of x at a time within the last step, in s. What it writes for others has no meaning.
+	interpolate(t float64, x []float64, unknowns []Unknown)
 }
 
 // point is the solution at one time.
@@ -205,6 +214,9 @@ func newIntegration(ctx context.Context, s *System, o TransientOptions) *integra
 	}
 	r := &integration{ctx: ctx, s: s, o: o, w: s.newWorkspace(), log: o.Logger}
 	r.step.r = r
+	for u := s.first(); u < len(s.names); u++ {
+		r.free = append(r.free, Unknown(u))
+	}
 	switch o.Method {
 	case TRBDF2:
 		r.resolution = newResolution(s, o.Accuracy, trbdf2Share, trbdf2Order)

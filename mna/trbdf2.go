@@ -78,7 +78,7 @@ func (m *trbdf2) attempt(end float64) error {
 	}
 	t := a.t + gamma*m.h
 	if m.steps > 0 {
-		blend(x, t, &m.earlierStart, &m.earlierMiddle, a)
+		blend(x, m.r.free, t, &m.earlierStart, &m.earlierMiddle, a)
 	} else {
 		copy(x, a.x)
 	}
@@ -89,9 +89,9 @@ func (m *trbdf2) attempt(end float64) error {
 		m.constant[i] = -earlier / share * (rate + b.rate[i])
 	}
 	if m.steps > 0 {
-		blend(x, end, &m.earlierStart, &m.earlierMiddle, a, b)
+		blend(x, m.r.free, end, &m.earlierStart, &m.earlierMiddle, a, b)
 	} else {
-		blend(x, end, a, b)
+		blend(x, m.r.free, end, a, b)
 	}
 	return m.stage(&m.finish, end, alpha)
 }
@@ -249,19 +249,21 @@ func (m *trbdf2) accept() {
 	m.steps++
 }
 
-// interpolate fills x with the cubic through the three points of the last step and the middle of the step before, or with the parabola through the
+// interpolate takes the cubic through the three points of the last step and the middle of the step before, or the parabola through the
 // three points in the first step after a restart.
-func (m *trbdf2) interpolate(t float64, x []float64) {
+func (m *trbdf2) interpolate(t float64, x []float64, unknowns []Unknown) {
 	if m.steps > 1 {
-		blend(x, t, &m.middle, &m.earlierStart, &m.earlierMiddle, &m.start)
+		blend(x, unknowns, t, &m.middle, &m.earlierStart, &m.earlierMiddle, &m.start)
 		return
 	}
-	blend(x, t, &m.earlierStart, &m.earlierMiddle, &m.start)
+	blend(x, unknowns, t, &m.earlierStart, &m.earlierMiddle, &m.start)
 }
 
-// blend fills x with the polynomial through the points at time t in s (Lagrange).
-func blend(x []float64, t float64, points ...*point) {
-	clear(x)
+// blend fills some unknowns of x with the polynomial through the points at time t in s (Lagrange).
+func blend(x []float64, unknowns []Unknown, t float64, points ...*point) {
+	for _, u := range unknowns {
+		x[u] = 0
+	}
 	for i, p := range points {
 		weight := 1.0
 		for j, o := range points {
@@ -269,8 +271,8 @@ func blend(x []float64, t float64, points ...*point) {
 				weight *= (t - o.t) / (p.t - o.t)
 			}
 		}
-		for k, v := range p.x {
-			x[k] += weight * v
+		for _, u := range unknowns {
+			x[u] += weight * p.x[u]
 		}
 	}
 }
