@@ -5,6 +5,7 @@ import (
 	"math/cmplx"
 	"runtime"
 	"sync"
+	"sync/atomic"
 
 	"poise/netlist"
 )
@@ -62,33 +63,41 @@ func (e *evaluation) curve(q netlist.Quantity) (*Curve, error) {
 	return c, nil
 }
 
-// leastShare is the number of frequencies that are worth a goroutine of their own.
-const leastShare = 32
+// shareSize is the number of frequencies that are computed one after the other: factors begin with the pivots of the last frequency, so that the last bits of a
+// value depend on those before it in its share, and shares must not depend on the number of goroutines.
+const shareSize = 32
 
-// fill computes the values of c, a share of the frequencies in each goroutine. Every value depends on its
-// frequency alone, so the result does not depend on the number of goroutines.
+// fill computes the values of c, shares of the frequencies in as many goroutines as there are processors.
 func (e *evaluation) fill(c *Curve, q netlist.Quantity) error {
-	n := len(c.Frequencies)
-	workers := max(1, min(runtime.GOMAXPROCS(0), n/leastShare))
-	errs := make([]error, workers)
+	shares := (len(c.Frequencies) + shareSize - 1) / shareSize
+	errs := make([]error, shares)
+	var next atomic.Int64
 	var wait sync.WaitGroup
-	for w := range workers {
+	for range min(runtime.GOMAXPROCS(0), shares) {
 		wait.Go(func() {
-			p := nowhere()
-			for i := w * n / workers; i < (w+1)*n/workers; i++ {
-				if errs[w] = e.ctx.Err(); errs[w] != nil {
-					return
-				}
-				p.frequency = c.Frequencies[i]
-				if c.Values[i], errs[w] = e.number(q, p); errs[w] != nil {
-					return
-				}
+			for k := int(next.Add(1)) - 1; k < shares; k = int(next.Add(1)) - 1 {
+				errs[k] = e.fillShare(c, q, k)
 			}
 		})
 	}
 	wait.Wait()
 	for _, err := range errs {
 		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// fillShare computes share k of the values of c.
+func (e *evaluation) fillShare(c *Curve, q netlist.Quantity, k int) (err error) {
+	p := nowhere()
+	for i := k * shareSize; i < min((k+1)*shareSize, len(c.Frequencies)); i++ {
+		if err := e.ctx.Err(); err != nil {
+			return err
+		}
+		p.frequency = c.Frequencies[i]
+		if c.Values[i], err = e.number(q, p); err != nil {
 			return err
 		}
 	}
