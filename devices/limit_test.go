@@ -50,7 +50,7 @@ func TestLimitLetsGo(t *testing.T) {
 		x := newExponential(math.Pow(10, rapid.Float64Range(-40, 2).Draw(t, "decades")), rapid.Float64Range(0.005, 0.3).Draw(t, "nVt"))
 		v := rapid.Float64Range(-50, 3).Draw(t, "asked")
 		last := rapid.Float64Range(-50, 3).Draw(t, "last")
-		const most = 200 // some thermal voltages each
+		const most = 200 // 3 V are 600 of the smallest nVt, and every evaluation brings a few
 		for range most {
 			u, limited := x.limit(v, last)
 			require.False(t, math.IsNaN(u))
