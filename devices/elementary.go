@@ -46,7 +46,7 @@ func exp(x float64) float64 {
 	return scale * (t[0] + (t[1] + t[0]*p))
 }
 
-// logOf returns ln x for a normal x > 0, with an error below 2^-52 max(1, |ln x|): small in itself, not beside a logarithm near 0.
+// logOf returns ln x for a normal x > 0, with an error below 2^-52 max(1, |ln x|): small in itself, if not beside a logarithm near 0.
 func logOf(x float64) float64 {
 	b := math.Float64bits(x)
 	exponent := float64(int64(b>>fractionBits) - exponentBias)
@@ -57,5 +57,5 @@ func logOf(x float64) float64 {
 	r := (math.Float64frombits(fraction|oneBits) - middle) * t[0]
 	r2 := r * r
 	p := r - r2*(1./2-r*(1./3)+r2*(1./4-r*(1./5)+r2*(1./6)))
-	return exponent*math.Ln2 + (t[1] + p)
+	return exponent*(tableSize*ln2StepHigh) + (t[1] + (p + exponent*(tableSize*ln2StepLow)))
 }
