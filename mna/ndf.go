@@ -68,8 +68,9 @@ type ndf struct {
 	noise     []float64 // of the free unknowns
 	ratio     float64   // of the attempted step
 	nextOrder int
-	last      int // order of the last accepted step, or byStarter or afterJump
-	failures  int // in a row
+	last      int  // order of the last accepted step, or byStarter or afterJump
+	failures  int  // in a row
+	doubted   bool // the past is to be given up before the next attempt
 }
 
 func newNDF(r *integration) *ndf {
@@ -84,7 +85,7 @@ func newNDF(r *integration) *ndf {
 
 func (m *ndf) restart(from *point) {
 	m.starter.restart(from)
-	m.started, m.known, m.failures = false, 0, 0
+	m.started, m.doubted, m.known, m.failures = false, false, 0, 0
 	m.ramp = true
 	m.control.restart()
 	m.newton.forget()
@@ -99,6 +100,9 @@ func (m *ndf) end() *point {
 
 // attempt solves the equations at the end of the step, in s.
 func (m *ndf) attempt(end float64) error {
+	if m.doubted {
+		m.restart(&m.newest)
+	}
 	if !m.started {
 		return m.starter.attempt(end)
 	}
@@ -277,10 +281,7 @@ func (m *ndf) bent(order int) (float64, int) {
 func (m *ndf) listen() {
 	w := m.r.w
 	copy(m.error, w.update)
-	w.chargeRounding(w.update, m.alpha)
-	w.lu.Solve(w.update)
-	w.work.Solves++
-	copy(m.noise, w.update)
+	w.rounding(m.noise, m.alpha)
 }
 
 // differenceMargin is how many times the sum of the weights of a difference over equal steps the rounding of unknowns may count in it over others.
@@ -294,7 +295,7 @@ func (m *ndf) beyondNoise() (float64, int) {
 	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(share)*m.distance[0]*m.memory, bend/m.reach[k+1])
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
-		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*math.Abs(m.noise[i])
+		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*m.noise[i]
 		e *= m.weight(first + i)
 		if !(e <= math.MaxFloat64) {
 			return math.Inf(1), first + i
@@ -325,7 +326,7 @@ func (m *ndf) refuse(ratio float64) float64 {
 	f := m.control.factor(ratio)
 	if k := m.order; m.failures >= patience {
 		// The error is not one of the step but of the past: a kink, or rounding that differences enlarge.
-		m.restart(&m.newest)
+		m.doubted = true
 	} else if k > 1 {
 		if below, _ := m.largest(k - 1); below < ratio {
 			m.setOrder(k - 1)
@@ -515,6 +516,7 @@ func (m *ndf) append(p *point) {
 	m.newest.t = p.t
 	copy(m.newest.x, p.x)
 	copy(m.newest.q, p.q)
+	copy(m.newest.rate, p.rate)
 }
 
 // interpolate takes the polynomial through the end of the last step and as many points before it as its order has.

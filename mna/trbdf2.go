@@ -165,11 +165,7 @@ const noiseMargin = 16
 // listen finds how much of the unknowns is rounding: in a short step the charges of nodes far from ground are large beside their change, and
 // currents made of them carry their last bits.
 func (m *trbdf2) listen() {
-	w := m.r.w
-	w.chargeRounding(w.update, 1/(share*m.h))
-	w.lu.Solve(w.update)
-	w.work.Solves++
-	copy(m.noise, w.update)
+	m.r.w.rounding(m.noise, 1/(share*m.h))
 }
 
 // rank returns the largest error beside the allowed one, after a margin of noises is taken off, and where it is. It is infinite if
@@ -182,7 +178,7 @@ func (m *trbdf2) rank(margin float64) (float64, int) {
 		k := r.s.first() + i
 		e := max(math.Abs(left), math.Abs(m.whole[i])/r.dense, math.Abs(bend.of(m, k))/r.dense) // NaN stays
 		if margin > 0 {
-			e -= margin * math.Abs(m.noise[i])
+			e -= margin * m.noise[i]
 		}
 		e /= r.local(k, m.finish.x[k]-m.start.x[k])
 		if !(e <= math.MaxFloat64) {

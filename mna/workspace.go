@@ -173,7 +173,23 @@ func (w *workspace) chargeRates(rates, x []float64, alpha float64) {
 	}
 }
 
-// chargeRounding fills rates with numbers of irregular sign and of the size of the rounding of alpha q.
+// rounding fills noise with what the rounding of alpha q makes of every free unknown: the larger of what it makes if it has the same sign everywhere, as in a group of
+// nodes that charges alone tie together, and if it has not. It spoils the update.
+func (w *workspace) rounding(noise []float64, alpha float64) {
+	w.chargeRounding(noise, alpha)
+	copy(w.update, noise)
+	w.lu.Solve(w.update)
+	for i, v := range w.update {
+		noise[i], w.update[i] = math.Abs(v), noise[i]*mixedSign(i)
+	}
+	w.lu.Solve(w.update)
+	for i, v := range w.update {
+		noise[i] = max(noise[i], math.Abs(v))
+	}
+	w.work.Solves += 2
+}
+
+// chargeRounding fills rates with the size of the rounding of alpha q.
 func (w *workspace) chargeRounding(rates []float64, alpha float64) {
 	const bit = 0x1p-52
 	clear(rates)
@@ -182,9 +198,6 @@ func (w *workspace) chargeRounding(rates []float64, alpha float64) {
 		if row, col := w.sys.rows[k], w.sys.cols[k]; row >= first && col > 0 {
 			rates[row-first] += bit * alpha * math.Abs(c*w.eval.X[col])
 		}
-	}
-	for i := range rates {
-		rates[i] *= mixedSign(i)
 	}
 }
 
