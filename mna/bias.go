@@ -26,8 +26,8 @@ type Bias struct {
 const (
 	RungNewton  = "newton"
 	RungDamped  = "damped newton"
-	RungPseudo  = "pseudo-transient"
 	RungSources = "source stepping"
+	RungPseudo  = "pseudo-transient"
 	RungShunts  = "shunt stepping"
 )
 
@@ -113,7 +113,7 @@ func (c *climb) run() error {
 		run  func() error
 	}{
 		{RungNewton, &start, c.plain}, {RungDamped, &c.best, c.damped},
-		{RungPseudo, &start, c.pseudo}, {RungSources, &start, c.sources}, {RungShunts, &start, c.shunts},
+		{RungSources, &start, c.sources}, {RungPseudo, &start, c.pseudo}, {RungShunts, &start, c.shunts},
 	}
 	var last error
 	for _, r := range rungs {
