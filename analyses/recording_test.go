@@ -69,8 +69,9 @@ func TestStepsAreCutFinelyEnough(t *testing.T) {
 		s.Run.Step, s.Run.Until, s.Circuit.Accuracy = 0.1/frequency, 10/frequency, accuracy
 		v, err := Measure(t.Context(), s, "volts(in)", "volts(in, out)", "amps(R1)", "watts(R1)", "volts(out)", "volts(in)*volts(in)*volts(in)*volts(in)/1V*1/1V*1/1V")
 		require.NoError(t, err)
-		// The error of a cubic, u (u - 1/3) (u - 2/3) (u - 1), is 7 % larger at its peak than where the recording looks.
-		allowed := 1.07 * allowance(accuracy, -amplitude, amplitude)
+		// The error of a cubic, u (u - 1/3) (u - 2/3) (u - 1), is 7 % larger at its peak than where the recording looks, and a little more as
+		// the fourth derivative changes within the piece.
+		allowed := 1.1 * allowance(accuracy, -amplitude, amplitude)
 		looked := 0
 		for p := range v[0].Wave.pieces() {
 			for k := range 9 {

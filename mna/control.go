@@ -7,7 +7,7 @@ import "math"
 const (
 	safety       = 0.9
 	aim          = 0.35 // ratio of estimated to allowed error that steps are chosen for
-	integralGain = 0.7
+	integralGain = 0.9
 	pastGain     = 0.4
 	shrinkMost   = 0.2
 	growMost     = 4.0

@@ -17,7 +17,7 @@ const (
 	ndfDegree = ndfMost + 2 // of the highest divided difference
 	// ndfShare is the share of the accuracy that is allowed as the error of a step. Errors of up to a hundred steps that add up leave room for it; see
 	// forgotten for longer memories.
-	ndfShare = 0.02
+	ndfShare = 0.03
 )
 
 // kappa returns the coefficient of a formula, from table 1 of the paper.
@@ -309,11 +309,11 @@ func (m *ndf) beyondNoise() (float64, int) {
 
 const (
 	// lowerGain and raiseGain are by how much longer a step another order must allow to be taken.
-	lowerGain = 1.1
-	raiseGain = 1.2
+	lowerGain = 1.2
+	raiseGain = 1.1
 	// growStart is the most that steps grow by as long as no error has limited them, growNDF later.
-	growStart = 2.0
-	growNDF   = 1.5
+	growStart = 3.0
+	growNDF   = 1.7
 	// patience is how many steps in a row may be refused before the past is given up.
 	patience = 3
 )

@@ -37,6 +37,7 @@ func (r *integration) begin() error {
 	e.Limit = false
 	r.w.evaluate(&problem{drive: 1, alpha: 1, cold: r.o.Cold})
 	copy(from.q, e.Q)
+	from.setRate(e.F)
 	return r.enter(&from)
 }
 
@@ -59,7 +60,10 @@ func (r *integration) enter(from *point) error {
 	if r.stats.Restarts == 1 {
 		r.anchor(from.x)
 	}
-	start, err := r.consistent(from)
+	start, err := from, error(nil)
+	if r.stats.Restarts > 1 || r.o.Cold || !r.still() {
+		start, err = r.consistent(from)
+	}
 	if r.ctx.Err() != nil {
 		return r.ctx.Err()
 	}
@@ -73,6 +77,16 @@ func (r *integration) enter(from *point) error {
 	r.t = start.t
 	r.method.restart(start)
 	return nil
+}
+
+// still reports whether no signal moves in the first step, so that a bias point goes on as it is.
+func (r *integration) still() bool {
+	for _, signal := range r.s.signals {
+		if signal.At(r.t+r.h) != signal.At(r.t) {
+			return false
+		}
+	}
+	return true
 }
 
 // consistent returns a point just after the corner that is consistent with the charges of from. The implicit steps to it are made shorter until they resolve

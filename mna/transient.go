@@ -71,9 +71,9 @@ const (
 	// stepsPerScale is the least number of steps in the shortest time in which a signal changes character.
 	stepsPerScale = 8
 	// firstPerScale is that of the first step after a corner.
-	firstPerScale = 200
+	firstPerScale = 150
 	// leastSteps is the least number of steps of a whole run.
-	leastSteps = 50
+	leastSteps = 20
 	// leastShare bounds steps from below, as a share of the whole time: near time 0, where a cold circuit may do things of any
 	// speed, numbers tell apart far shorter times.
 	leastShare = 1e-21
