@@ -151,6 +151,9 @@ func newBipolar(v []float64, at Place, sign float64) (mna.Device, error) {
 			return nil, &ParamError{Param: bipolarParams()[k].Name, Value: v[k], Want: "a built-in potential that is still positive at the device's temperature"}
 		}
 	}
+	if v[bRBmin] > v[bRB] {
+		return nil, &ParamError{Param: "rBmin", Value: v[bRBmin], Want: "at most rB"}
+	}
 	grow := h.saturation(v[bExpIs], v[bBandgap])
 	gain := math.Pow(h.ratio, v[bExpBeta])
 	a := at.Area
