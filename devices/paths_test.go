@@ -206,3 +206,20 @@ func TestDepletionChargeIsTheIntegralOfItsCapacitance(t *testing.T) {
 		}
 	}
 }
+
+// TestGuardedFormulasAreIntegrals: saturation currents beyond the knee currents and beyond tauFcurr, absurd but allowed, need the guards
+// wherever the junctions are off.
+func TestGuardedFormulasAreIntegrals(t *testing.T) {
+	v := fullNPN()
+	for name, x := range map[string]float64{"Is": 2e-3, "kneeF": 1.7e-3, "kneeR": 4e-3, "tauFcurr": 1e-3, "earlyF": 0.9, "earlyR": 0.7} {
+		v[name] = x
+	}
+	b := bind(madeOf(t, "npn", v, Place{Temperature: 304, Area: 0.4}), 4)
+	for _, p := range [][2][]float64{
+		{{0, 0.4, 0.1, 0.2, 0, 0.35, 0.11, 0.21}, {0, 0.5, 0, 0.3, 0.1, 0.45, -0.1, 0.3}},
+		{{0, 0.1, 0.1, 0, 0, 0.034, 0.06, 0.1}, {0, 0.1, 0.1, 0, 0, 0.0332, 0.058, 0.1}}, // across the knee guard, which is narrow
+		{{0, -0.4, 0.4, -0.4, 0, -0.35, 0.31, -0.21}, {0, -0.5, 0.5, -0.3, 0.1, -0.45, 0.5, -0.3}},
+	} {
+		checkPath(t, b, p[0], p[1])
+	}
+}
