@@ -134,7 +134,9 @@ func (s *System) analyse() error {
 		rows[k], cols[k] = s.rows[k]-first, s.cols[k]-first
 		if rows[k] < 0 || cols[k] < 0 {
 			rows[k], cols[k] = -1, -1
+			continue
 		}
+		s.free = append(s.free, spot{int32(k), s.rows[k], s.cols[k]})
 	}
 	p, err := sparse.NewPattern(len(s.names)-int(first), rows, cols)
 	if err != nil {

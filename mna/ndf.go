@@ -64,6 +64,7 @@ type ndf struct {
 	reach     [ndfDegree + 1]float64 // s^m, product of the first m distances
 	alpha     float64                // 1/s
 	constant  []float64
+	weights   []float64 // 1/allowed error, of the free unknowns
 	error     []float64 // of the free unknowns
 	noise     []float64 // of the free unknowns
 	ratio     float64   // of the attempted step
@@ -79,7 +80,7 @@ func newNDF(r *integration) *ndf {
 	return &ndf{
 		r: r, memory: 1, control: newControl(ndfMost + 1), newton: newStageNewton(r), starter: newTRBDF2(r),
 		x: make([]ladder, n), q: make([]ladder, n), nextX: make([]ladder, n), nextQ: make([]ladder, n), newest: s.newPoint(), attempted: s.newPoint(),
-		constant: make([]float64, n), error: make([]float64, n-s.first()), noise: make([]float64, n-s.first()),
+		constant: make([]float64, n), error: make([]float64, n-s.first()), weights: make([]float64, n-s.first()), noise: make([]float64, n-s.first()),
 	}
 }
 
@@ -219,6 +220,7 @@ func (m *ndf) extend(degree int) {
 		pastX, pastQ := &m.x[i], &m.q[i]
 		dx, dq := m.attempted.x[i], m.attempted.q[i]
 		x[0], q[0] = dx, dq
+		m.weights[i-m.r.s.first()] = m.r.weight(i, dx-pastX[0])
 		for j, s := range inverse {
 			dx, dq = (dx-pastX[j])*s, (dq-pastQ[j])*s
 			x[j+1], q[j+1] = dx, dq
@@ -239,8 +241,9 @@ func (m *ndf) estimate(order int) (float64, int) {
 	w.lu.Solve(w.update)
 	w.work.Solves++
 	ratio, worst := 0.0, 0
+	weights := m.weights[:len(w.update)]
 	for i, e := range w.update {
-		if e = math.Abs(e) * m.weight(first+i); !(e <= ratio) {
+		if e = math.Abs(e) * weights[i]; !(e <= ratio) {
 			ratio, worst = e, first+i
 			if !(e <= math.MaxFloat64) {
 				return math.Inf(1), worst
@@ -259,15 +262,12 @@ func (m *ndf) largest(order int) (float64, int) {
 	return ratio, worst
 }
 
-// weight is 1/allowed error of an unknown in the attempted step.
-func (m *ndf) weight(i int) float64 { return m.r.weight(i, m.attempted.x[i]-m.newest.x[i]) }
-
 // bent returns the largest ratio of the estimated to the allowed error of the interpolation of the given order.
 func (m *ndf) bent(order int) (float64, int) {
 	scale := m.bend(order) / m.r.dense
 	ratio, worst := 0.0, 0
 	for i := m.r.s.first(); i < len(m.x); i++ {
-		if e := math.Abs(scale*m.nextX[i][order+1]) * m.weight(i); !(e <= ratio) {
+		if e := math.Abs(scale*m.nextX[i][order+1]) * m.weights[i-m.r.s.first()]; !(e <= ratio) {
 			ratio, worst = e, i
 			if !(e <= math.MaxFloat64) {
 				return math.Inf(1), i
@@ -296,7 +296,7 @@ func (m *ndf) beyondNoise() (float64, int) {
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
 		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*m.noise[i]
-		e *= m.weight(first + i)
+		e *= m.weights[i]
 		if !(e <= math.MaxFloat64) {
 			return math.Inf(1), first + i
 		}
@@ -411,9 +411,9 @@ func (m *ndf) recall() float64 {
 
 // largestOf returns the largest of errors beside the allowed ones.
 func (m *ndf) largestOf(errors []float64) float64 {
-	largest, first := 0.0, m.r.s.first()
+	largest := 0.0
 	for i, e := range errors {
-		largest = max(largest, math.Abs(e)*m.weight(first+i))
+		largest = max(largest, math.Abs(e)*m.weights[i])
 	}
 	return largest
 }

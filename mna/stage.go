@@ -118,14 +118,9 @@ func (n *stageNewton) changes(alpha float64) float64 {
 	w, first := n.r.w, n.r.s.first()
 	e := &w.eval
 	clear(w.update)
-	for k, g := range e.G {
-		row, col := int(w.sys.rows[k])-first, int(w.sys.cols[k])-first
-		if row < 0 || col < 0 {
-			continue
-		}
-		if change := g - n.g[k] + alpha*(e.C[k]-n.c[k]); change != 0 {
-			w.update[row] += change * n.update[col]
-		}
+	for _, p := range w.sys.free {
+		k := p.slot
+		w.update[int(p.row)-first] += (e.G[k] - n.g[k] + alpha*(e.C[k]-n.c[k])) * n.update[int(p.col)-first]
 	}
 	w.lu.Solve(w.update)
 	w.work.Solves++
@@ -178,12 +173,10 @@ func (n *stageNewton) apply() (size float64, finite bool) {
 // carry moves the currents and charges in eval along an update: exact but for the square of a tiny step.
 func (w *workspace) carry(update []float64) {
 	e, first := &w.eval, int32(w.sys.first())
-	for k, col := range w.sys.cols {
-		if col < first {
-			continue
-		}
-		row, d := w.sys.rows[k], update[col-first]
-		e.F[row] += e.G[k] * d
-		e.Q[row] += e.C[k] * d
+	f, q, g, c := e.F, e.Q, e.G, e.C
+	for _, p := range w.sys.free {
+		d := update[p.col-first]
+		f[p.row] += g[p.slot] * d
+		q[p.row] += c[p.slot] * d
 	}
 }

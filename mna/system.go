@@ -20,8 +20,12 @@ type System struct {
 	junctions  int
 	slots      int
 	rows, cols []int32 // of each slot, in the whole system
+	free       []spot  // the slots among the free unknowns
 	analysis   *sparse.Analysis
 }
+
+// spot is where a slot stands, in the whole system.
+type spot struct{ slot, row, col int32 }
 
 // Unknown returns the place of a node in the solution.
 func (s *System) Unknown(node int) Unknown { return s.unknown[node] }

@@ -166,10 +166,8 @@ func (w *workspace) step(p *problem) error {
 func (w *workspace) chargeRates(rates, x []float64, alpha float64) {
 	clear(rates)
 	first := int32(w.sys.first())
-	for k, c := range w.eval.C {
-		if row, col := w.sys.rows[k], w.sys.cols[k]; row >= first && col >= first {
-			rates[row-first] += alpha * c * x[col-first]
-		}
+	for _, p := range w.sys.free {
+		rates[p.row-first] += alpha * w.eval.C[p.slot] * x[p.col-first]
 	}
 }
 
