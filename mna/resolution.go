@@ -25,15 +25,16 @@ const (
 
 // resolution knows how far every unknown has swung, and so what error is allowed.
 type resolution struct {
-	tolerance  float64 // allowed error of a step beside the swing
-	dense      float64 // allowed error of the interpolation, beside tolerance
-	branch     []bool
-	low, high  []float64 // of each unknown so far
-	stimulus   float64   // V or A, the largest swing of a signal seen or ahead
-	swing      []float64 // of each unknown, floors included
-	allowedFor float64   // V or A, the stimulus that the floors were taken from
-	perError   []float64 // of each unknown: 1/allowed error of a step over which it moves by no more than its swing
-	worst      int       // the unknown with the largest error in the last step
+	tolerance float64 // allowed error of a step beside the swing
+	dense     float64 // allowed error of the interpolation, beside tolerance
+	branch    []bool
+	low, high []float64 // of each unknown so far
+	stimulus  float64   // V or A, the largest swing of a signal seen or ahead
+	swing     []float64 // of each unknown, floors included
+	largest   float64   // V, the largest voltage so far
+	common    float64   // V, the floor of all swings
+	perError  []float64 // of each unknown: 1/allowed error of a step over which it moves by no more than its swing
+	worst     int       // the unknown with the largest error in the last step
 }
 
 // newResolution returns the resolution for a method of the given order, which may make the given share of the accuracy as the error of a step.
@@ -63,44 +64,51 @@ func (z *resolution) lookAhead(signals []Signal, t, until float64) {
 func (z *resolution) anchor(x []float64) {
 	copy(z.low, x)
 	copy(z.high, x)
-	z.allow()
+	z.common, z.largest = 0, 0
+	for i, v := range x {
+		if !z.branch[i] {
+			z.largest = max(z.largest, math.Abs(v))
+		}
+	}
+	z.raise(max(z.largest, math.SmallestNonzeroFloat64))
 }
 
 // widen takes x into the swings.
 func (z *resolution) widen(x []float64) {
-	wider := false
+	largest := z.largest
 	for i, v := range x {
-		if v < z.low[i] {
-			z.low[i], wider = v, true
+		if v >= z.low[i] && v <= z.high[i] {
+			continue
 		}
-		if v > z.high[i] {
-			z.high[i], wider = v, true
+		z.low[i], z.high[i] = min(z.low[i], v), max(z.high[i], v)
+		if !z.branch[i] {
+			largest = max(largest, math.Abs(v))
 		}
+		z.allow(i)
 	}
-	if wider || z.stimulus > z.allowedFor {
-		z.allow()
+	z.raise(largest)
+}
+
+// raise takes the largest voltage so far, and all allowed errors anew if their common floor has risen.
+func (z *resolution) raise(largest float64) {
+	z.largest = largest
+	if common := max(stimulusShare*z.stimulus, largestShare*largest); common > z.common {
+		z.common = common
+		for i := range z.swing {
+			z.allow(i)
+		}
 	}
 }
 
-// allow takes the allowed errors from the swings.
-func (z *resolution) allow() {
-	largest := 0.0
-	for i, branch := range z.branch {
-		if !branch {
-			largest = max(largest, -z.low[i], z.high[i])
-		}
+// allow takes the allowed error of an unknown from its swing.
+func (z *resolution) allow(i int) {
+	floor := max(leastVoltage, z.common)
+	if z.branch[i] {
+		floor = max(leastCurrent, stimulusSiemens*z.common)
 	}
-	z.allowedFor = z.stimulus
-	common := max(stimulusShare*z.stimulus, largestShare*largest)
-	for i := range z.swing {
-		floor := max(leastVoltage, common)
-		if z.branch[i] {
-			floor = max(leastCurrent, stimulusSiemens*common)
-		}
-		size := max(math.Abs(z.low[i]), math.Abs(z.high[i]))
-		z.swing[i] = max(z.high[i]-z.low[i], sizeShare*size, floor)
-		z.perError[i] = 1 / z.local(i, 0)
-	}
+	size := max(math.Abs(z.low[i]), math.Abs(z.high[i]))
+	z.swing[i] = max(z.high[i]-z.low[i], sizeShare*size, floor)
+	z.perError[i] = 1 / (z.tolerance * z.swing[i])
 }
 
 // weight returns 1/allowed error of an unknown in a step over which it moves by the given amount.

@@ -149,7 +149,6 @@ func stall(i int) float64 {
 // forget makes the next stage learn anew how the derivatives change: something has happened in between.
 func (n *stageNewton) forget() {
 	n.known, n.unseen = false, bendLooks
-	n.r.w.repivot = true
 }
 
 // apply adds the update to the free unknowns and returns its size in allowed errors.

@@ -83,15 +83,17 @@ func (w *workspace) evaluate(p *problem) {
 func (w *workspace) assemble(p *problem) {
 	e := &w.eval
 	copy(w.residual, e.F)
-	copy(w.jacobian, e.G)
 	for i, c := range p.constant {
 		w.residual[i] += c
 	}
 	if p.alpha != 0 {
 		w.addRates(p)
-		for k, c := range e.C {
-			w.jacobian[k] += p.alpha * c
+		g, c := e.G[:len(w.jacobian)], e.C[:len(w.jacobian)]
+		for k := range w.jacobian {
+			w.jacobian[k] = g[k] + p.alpha*c[k]
 		}
+	} else {
+		copy(w.jacobian, e.G)
 	}
 	if p.shunt != 0 {
 		w.addShunt(p)
