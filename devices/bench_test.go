@@ -10,9 +10,7 @@ import (
 )
 
 // forwardBias is a point at which a transistor amplifies: c b e s, then what is inside, in the order in which it is asked for.
-func forwardBias(n int) []float64 {
-	return append([]float64(nil), []float64{0, 5, 0.652, 0.003, 0, 4.999, 0.651, 0.0035}[:n]...)
-}
+func forwardBias() []float64 { return []float64{0, 5, 0.652, 0.003, 0, 4.999, 0.651, 0.0035} }
 
 // benchmarkEval measures the evaluation of one device at x, alone, with and without its charges.
 func benchmarkEval(b *testing.B, d mna.Device, pins int, x []float64) {
@@ -32,26 +30,6 @@ func benchmarkEval(b *testing.B, d mna.Device, pins int, x []float64) {
 			}
 		})
 	}
-}
-
-// madeOf makes a device of a family from the parameters given and the others' defaults.
-func madeOf(t require.TestingT, family string, parameters map[string]float64, at Place) mna.Device {
-	for _, f := range Families() {
-		if f.Name != family {
-			continue
-		}
-		v := f.Defaults()
-		for name, x := range parameters {
-			i := f.Index(name)
-			require.GreaterOrEqual(t, i, 0, name)
-			v[i] = x
-		}
-		d, err := f.New(v, at)
-		require.NoError(t, err)
-		return d
-	}
-	require.Fail(t, "no such family", family)
-	return nil
 }
 
 // room is where and how an ordinary device stands.
@@ -78,34 +56,51 @@ func fullNPN() map[string]float64 {
 	return v
 }
 
-func BenchmarkEval(b *testing.B) {
+// sample is a device with a point to evaluate it at: its pins, then what is inside.
+type sample struct {
+	name string
+	d    mna.Device
+	pins int
+	x    []float64
+}
+
+// samples holds a device of every kind, at its ordinary work.
+func samples(t require.TestingT) []sample {
 	tone, err := Sine{Peak: 1, Frequency: 1e3}.New()
-	require.NoError(b, err)
+	require.NoError(t, err)
 	two := []float64{0, 1.3, 0.2, 1e-3}
 	junction := []float64{0, 0.62, 0, 0.615}
-	for _, c := range []struct {
-		name string
-		d    mna.Device
-		pins int
-		x    []float64
-	}{
+	return []sample{
 		{"resistor", NewResistor(270), 2, two},
 		{"capacitor", NewCapacitor(220e-12, nan), 2, two},
 		{"inductor", NewInductor(1e-3, nan), 2, two},
 		{"voltage source", NewVoltageSource(Constant(2)), 2, two},
 		{"sine source", NewVoltageSource(tone), 2, two},
 		{"current source", NewCurrentSource(Constant(1e-3)), 2, two},
-		{"diode", madeOf(b, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "grad": 0.41, "tau": 3e-9, "breakdown": 50}, room), 2, junction},
-		{"npn of the yardstick", madeOf(b, "npn", yardstickNPN(), room), 4, forwardBias(8)},
-		{"npn with everything", madeOf(b, "npn", fullNPN(), room), 4, forwardBias(8)},
-		{"npn with little", madeOf(b, "npn", map[string]float64{"Is": 1e-14, "betaF": 200, "earlyF": 60}, room), 4, forwardBias(8)},
-	} {
+		{"diode", made(t, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "grad": 0.41, "tau": 3e-9, "breakdown": 50}, room), 2, junction},
+		{"npn of the yardstick", made(t, "npn", yardstickNPN(), room), 4, forwardBias()},
+		{"npn with everything", made(t, "npn", fullNPN(), room), 4, forwardBias()},
+		{"npn with little", made(t, "npn", map[string]float64{"Is": 1e-14, "betaF": 200, "earlyF": 60}, room), 4, forwardBias()},
+	}
+}
+
+func BenchmarkEval(b *testing.B) {
+	for _, c := range samples(b) {
 		b.Run(c.name, func(b *testing.B) { benchmarkEval(b, c.d, c.pins, c.x) })
 	}
 }
 
+func TestEvaluationAllocatesNothing(t *testing.T) {
+	for _, c := range samples(t) {
+		b := bind(c.d, c.pins)
+		e := b.newEval(c.x[:b.n])
+		e.Limit = true
+		require.Zero(t, testing.AllocsPerRun(20, func() { b.stamp.Eval(e) }), c.name)
+	}
+}
+
 // yardstick builds testdata/reference/pair.poise with its two leads driven by a common signal.
-func yardstick(t require.TestingT, common mna.Signal) (s *mna.System, devices []mna.Device) {
+func yardstick(t require.TestingT, common mna.Signal) *mna.System {
 	n := mna.NewBuilder()
 	nodes := map[string]int{"gnd": 0}
 	node := func(name string) int {
@@ -120,26 +115,27 @@ func yardstick(t require.TestingT, common mna.Signal) (s *mna.System, devices []
 			pins = append(pins, node(a))
 		}
 		n.Add(name, d, pins...)
-		devices = append(devices, d)
 	}
-	for name, signal := range map[string]mna.Signal{"vp": Constant(9), "vn": Constant(-9), "sp": common, "sn": common} {
-		require.NoError(t, n.Hold(node(name), signal))
-	}
+	hold := func(name string, signal mna.Signal) { require.NoError(t, n.Hold(node(name), signal)) }
+	hold("vp", Constant(9))
+	hold("vn", Constant(-9))
+	hold("sp", common)
+	hold("sn", common)
 	right := yardstickNPN()
 	right["Is"], right["betaF"] = 6.8005e-15, 393.6
 	add("Rlead1", NewResistor(175), "sp", "bp")
 	add("Rlead2", NewResistor(185), "sn", "bn")
 	add("Ccab1", NewCapacitor(220e-12, nan), "bp", "gnd")
 	add("Ccab2", NewCapacitor(260e-12, nan), "bn", "gnd")
-	add("Q1", madeOf(t, "npn", yardstickNPN(), room), "vp", "bp", "e1", "gnd")
-	add("Q2", madeOf(t, "npn", right, room), "out", "bn", "e2", "gnd")
+	add("Q1", made(t, "npn", yardstickNPN(), room), "vp", "bp", "e1", "gnd")
+	add("Q2", made(t, "npn", right, room), "out", "bn", "e2", "gnd")
 	add("Re1", NewResistor(270), "e1", "tail")
 	add("Re2", NewResistor(270.54), "tail", "e2")
 	add("Rload", NewResistor(39e3), "vp", "out")
 	add("Rtail", NewResistor(36e3), "tail", "vn")
 	s, err := n.Build()
 	require.NoError(t, err)
-	return s, devices
+	return s
 }
 
 // BenchmarkYardstick runs the yardstick on a modulated carrier; ns/evaluation is what one Newton iteration costs on the whole path, with its
@@ -147,7 +143,7 @@ func yardstick(t require.TestingT, common mna.Signal) (s *mna.System, devices []
 func BenchmarkYardstick(b *testing.B) {
 	carrier, err := Modulated{Peak: 0.2, Carrier: 1e6, Tone: 1e3, Depth: 0.8}.New()
 	require.NoError(b, err)
-	s, _ := yardstick(b, carrier)
+	s := yardstick(b, carrier)
 	evaluations := 0
 	for b.Loop() {
 		stats, err := s.Transient(context.Background(), mna.TransientOptions{Until: 100e-6}, func(*mna.Step) error { return nil })

@@ -126,7 +126,7 @@ func wideBipolar(t *rapid.T) *bound {
 		Area: math.Exp(rapid.Float64Range(-5, 5).Draw(t, "log area")),
 	}
 	family := rapid.SampledFrom([]string{"npn", "pnp"}).Draw(t, "family")
-	return bind(madeOf(t, family, v, at), 4)
+	return bind(made(t, family, v, at), 4)
 }
 
 // drawPath draws two points of b no further apart than pathVolts.
@@ -160,7 +160,7 @@ func TestDiodeChargesAndCurrentsAreIntegrals(t *testing.T) {
 			v[p.name] = math.Exp(rapid.Float64Range(math.Log(p.low), math.Log(p.high)).Draw(t, p.name))
 		}
 		at := Place{Temperature: rapid.Float64Range(220, 420).Draw(t, "temperature"), Area: math.Exp(rapid.Float64Range(-5, 5).Draw(t, "log area"))}
-		b := bind(madeOf(t, "diode", v, at), 2)
+		b := bind(made(t, "diode", v, at), 2)
 		volts := rapid.SampledFrom([]float64{0.6, 2, 1000}).Draw(t, "volts")
 		x, y := drawPath(t, b, volts)
 		if rapid.Bool().Draw(t, "at the breakdown") {
@@ -214,7 +214,7 @@ func TestGuardedFormulasAreIntegrals(t *testing.T) {
 	for name, x := range map[string]float64{"Is": 2e-3, "kneeF": 1.7e-3, "kneeR": 4e-3, "tauFcurr": 1e-3, "earlyF": 0.9, "earlyR": 0.7} {
 		v[name] = x
 	}
-	b := bind(madeOf(t, "npn", v, Place{Temperature: 304, Area: 0.4}), 4)
+	b := bind(made(t, "npn", v, Place{Temperature: 304, Area: 0.4}), 4)
 	for _, p := range [][2][]float64{
 		{{0, 0.4, 0.1, 0.2, 0, 0.35, 0.11, 0.21}, {0, 0.5, 0, 0.3, 0.1, 0.45, -0.1, 0.3}},
 		{{0, 0.1, 0.1, 0, 0, 0.034, 0.06, 0.1}, {0, 0.1, 0.1, 0, 0, 0.0332, 0.058, 0.1}}, // across the knee guard, which is narrow

@@ -5,9 +5,12 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"slices"
 	"testing"
 
 	"github.com/stretchr/testify/require"
+
+	"poise/mna"
 )
 
 // The files testdata/reference/bjt.json and diode.json hold evaluations of the written equations on 60 digits, made by the scripts beside them.
@@ -58,24 +61,21 @@ func readEvaluations(t *testing.T, name string) evaluations {
 	return e
 }
 
-// made makes the device of a case.
-func made(t *testing.T, family string, parameters map[string]float64, temperature, area float64) any {
-	for _, f := range Families() {
-		if f.Name != family {
-			continue
-		}
-		v := f.Defaults()
-		for name, x := range parameters {
-			i := f.Index(name)
-			require.GreaterOrEqual(t, i, 0, name)
-			v[i] = x
-		}
-		d, err := f.New(v, Place{Temperature: temperature, Area: area})
-		require.NoError(t, err)
-		return d
+// made makes a device of a family from the parameters given and the others' defaults.
+func made(t require.TestingT, family string, parameters map[string]float64, at Place) mna.Device {
+	all := Families()
+	k := slices.IndexFunc(all, func(f Family) bool { return f.Name == family })
+	require.GreaterOrEqual(t, k, 0, family)
+	f := &all[k]
+	v := f.Defaults()
+	for name, x := range parameters {
+		i := f.Index(name)
+		require.GreaterOrEqual(t, i, 0, name)
+		v[i] = x
 	}
-	t.Fatalf("no family %s", family)
-	return nil
+	d, err := f.New(v, at)
+	require.NoError(t, err)
+	return d
 }
 
 func compare(t *testing.T, what string, want, got, floor float64) {
@@ -86,7 +86,7 @@ func compare(t *testing.T, what string, want, got, floor float64) {
 
 func TestBipolarAgainstReference(t *testing.T) {
 	for _, c := range readEvaluations(t, "bjt.json").Cases {
-		q := made(t, c.Family, c.Parameters, c.Temperature, c.Area).(*bipolar)
+		q := made(t, c.Family, c.Parameters, Place{Temperature: c.Temperature, Area: c.Area}).(*bipolar)
 		for k, p := range c.Points {
 			name := fmt.Sprintf("%s, point %d: ", c.Case, k)
 			var v core
@@ -113,7 +113,7 @@ func TestBipolarAgainstReference(t *testing.T) {
 
 func TestDiodeAgainstReference(t *testing.T) {
 	for _, c := range readEvaluations(t, "diode.json").Cases {
-		d := made(t, c.Family, c.Parameters, c.Temperature, c.Area).(*diode)
+		d := made(t, c.Family, c.Parameters, Place{Temperature: c.Temperature, Area: c.Area}).(*diode)
 		for k, p := range c.Points {
 			name := fmt.Sprintf("%s, point %d: ", c.Case, k)
 			i, _, forward, _ := d.current(p.Junction)

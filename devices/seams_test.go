@@ -95,7 +95,7 @@ func seamTransistors(t *testing.T) []*bipolar {
 		for name, x := range c.change {
 			v[name] = x
 		}
-		all = append(all, madeOf(t, c.family, v, c.at).(*bipolar))
+		all = append(all, made(t, c.family, v, c.at).(*bipolar))
 	}
 	return all
 }
@@ -183,7 +183,7 @@ func TestSeamsOfTheDiode(t *testing.T) {
 		for name, x := range c.change {
 			v[name] = x
 		}
-		d := madeOf(t, "diode", v, c.at).(*diode)
+		d := made(t, "diode", v, c.at).(*diode)
 		current := func(v float64) (float64, float64) {
 			i, g, _, _ := d.current(v)
 			return i, g
@@ -200,10 +200,10 @@ func TestSeamsOfTheDiode(t *testing.T) {
 func TestTemperatureLawsStartAtTheReference(t *testing.T) {
 	v := fullNPN()
 	v["expBeta"], v["tref"] = 1.7, 291.3
-	made := func(kelvin float64) *bipolar {
-		return madeOf(t, "npn", v, Place{Temperature: kelvin - 4, Warmer: 4, Area: 1}).(*bipolar)
+	at := func(kelvin float64) *bipolar {
+		return made(t, "npn", v, Place{Temperature: kelvin - 4, Warmer: 4, Area: 1}).(*bipolar)
 	}
-	q := made(291.3)
+	q := at(291.3)
 	const rounding = 1e-14
 	for _, c := range []struct{ want, got float64 }{
 		{v["Is"], q.forward.is}, {v["leakE"], q.leakE.is}, {v["leakC"], q.leakC.is}, {v["betaF"], 1 / q.invBetaF}, {v["betaR"], 1 / q.invBetaR},
@@ -214,7 +214,7 @@ func TestTemperatureLawsStartAtTheReference(t *testing.T) {
 	}
 	// A quantity bends at the reference by no more than a ten-thousandth of a kelvin bends a smooth law.
 	const step = 1e-4 // K
-	below, above := made(291.3-step), made(291.3+step)
+	below, above := at(291.3-step), at(291.3+step)
 	for _, f := range []func(*bipolar) float64{
 		func(q *bipolar) float64 { return q.forward.is }, func(q *bipolar) float64 { return q.leakC.is }, func(q *bipolar) float64 { return q.invBetaF },
 		func(q *bipolar) float64 { return q.layerE.c }, func(q *bipolar) float64 { return q.layerC.inverse },
@@ -231,11 +231,11 @@ func TestLimitedEvaluationIsTheTangent(t *testing.T) {
 		pins int
 		x    []float64
 	}{
-		{"npn", madeOf(t, "npn", fullNPN(), room), 4, []float64{0, 5, 2.9, 0.1, -1, 4.2, 2.2, 0.4}},
-		{"pnp", madeOf(t, "pnp", fullNPN(), room), 4, []float64{0, -0.3, -4.1, 0.2, 1, -0.9, -3.7, -0.6}},
-		{"saturated", madeOf(t, "npn", yardstickNPN(), room), 4, []float64{0, 0.1, 3.8, 0, 0, 0.2, 3.3, 0.05}},
-		{"diode", madeOf(t, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "tau": 3e-9, "breakdown": 6}, room), 2, []float64{0, 4, 0, 3.1}},
-		{"broken down", madeOf(t, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "tau": 3e-9, "breakdown": 6}, room), 2, []float64{0, -14, 0, -12}},
+		{"npn", made(t, "npn", fullNPN(), room), 4, []float64{0, 5, 2.9, 0.1, -1, 4.2, 2.2, 0.4}},
+		{"pnp", made(t, "pnp", fullNPN(), room), 4, []float64{0, -0.3, -4.1, 0.2, 1, -0.9, -3.7, -0.6}},
+		{"saturated", made(t, "npn", yardstickNPN(), room), 4, []float64{0, 0.1, 3.8, 0, 0, 0.2, 3.3, 0.05}},
+		{"diode", made(t, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "tau": 3e-9, "breakdown": 6}, room), 2, []float64{0, 4, 0, 3.1}},
+		{"broken down", made(t, "diode", map[string]float64{"rS": 4, "cap": 7e-12, "tau": 3e-9, "breakdown": 6}, room), 2, []float64{0, -14, 0, -12}},
 	} {
 		b := bind(c.d, c.pins)
 		require.Equal(t, b.n, len(c.x), c.name)
