@@ -171,6 +171,20 @@ func TestSeamsOfTheBaseResistance(t *testing.T) {
 	}
 }
 
+// TestTheLeastBaseResistanceIsTheLeast: above rB it would make r_bb pass through zero.
+func TestTheLeastBaseResistanceIsTheLeast(t *testing.T) {
+	f := Families()[0]
+	v := f.Defaults()
+	v[f.Index("rB")], v[f.Index("rBmin")] = 3, 3.1
+	_, err := f.New(v, room)
+	var wrong *ParamError
+	require.ErrorAs(t, err, &wrong)
+	assert.Equal(t, "rBmin", wrong.Param)
+	v[f.Index("rBmin")] = 3
+	_, err = f.New(v, room)
+	require.NoError(t, err)
+}
+
 func TestSeamsOfTheDiode(t *testing.T) {
 	for _, c := range []struct {
 		change map[string]float64
