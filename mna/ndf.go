@@ -363,7 +363,7 @@ func (m *ndf) propose(ratio float64) float64 {
 		most = growStart
 	}
 	if m.ramp || m.since >= k {
-		if m.choices++; m.ramp || m.choices%recallEvery == 0 {
+		if m.choices++; m.choices%recallEvery == 0 {
 			m.memory = m.recall()
 		}
 		if f := m.choose(); m.nextOrder != k {
