@@ -80,6 +80,23 @@ func BenchmarkCheckMooring(b *testing.B) {
 	}
 }
 
+// BenchmarkLoadAndBias reads a one-channel file and finds its operating point.
+func BenchmarkLoadAndBias(b *testing.B) {
+	for b.Loop() {
+		d, err := netlist.Load(os.DirFS("../testdata/examples"), "mooring.poise")
+		if err != nil {
+			b.Fatal(err)
+		}
+		c, err := d.Circuit()
+		if err != nil {
+			b.Fatal(err)
+		}
+		if _, err := Bias(context.Background(), c); err != nil {
+			b.Fatal(err)
+		}
+	}
+}
+
 // BenchmarkResponse is one frequency of both modes.
 func BenchmarkResponse(b *testing.B) {
 	d, err := netlist.Load(os.DirFS("../testdata/examples"), "mooring.poise")

@@ -137,18 +137,28 @@ func FuzzLoad(f *testing.F) {
 	})
 }
 
+// BenchmarkLoadLargeFile loads files of some lengths: the time for a line must not depend on it.
 func BenchmarkLoadLargeFile(b *testing.B) {
-	var src strings.Builder
-	src.WriteString("design large\nrail vp = 9V\n")
-	for i := range 100_000 {
-		src.WriteString("vp -- R" + itoa(i) + " 4k7ohm tol 1% -- gnd\n")
-	}
-	files := fstest.MapFS{"x.poise": {Data: []byte(src.String())}}
-	b.ReportAllocs()
-	for b.Loop() {
-		if _, err := Load(files, "x.poise"); err != nil {
-			b.Fatal(err)
+	for _, lines := range []int{2000, 20_000, 100_000} {
+		var src strings.Builder
+		src.WriteString("design large\nrail vp = 9V\n")
+		for i := range lines {
+			src.WriteString("vp -- R" + itoa(i) + " 4k7ohm tol 1% -- gnd\n")
 		}
+		files := fstest.MapFS{"x.poise": {Data: []byte(src.String())}}
+		b.Run(itoa(lines), func(b *testing.B) {
+			b.ReportAllocs()
+			for b.Loop() {
+				d, err := Load(files, "x.poise")
+				if err != nil {
+					b.Fatal(err)
+				}
+				if _, err := d.Circuit(); err != nil {
+					b.Fatal(err)
+				}
+			}
+			b.ReportMetric(float64(lines)*float64(b.N)/b.Elapsed().Seconds(), "lines/s")
+		})
 	}
 }
 
