@@ -1,0 +1,148 @@
+package mna
+
+import "math"
+
+// share is the error that a formula of the given order makes in dq/dt, beside the difference of the charges to their extrapolation, in 1/s.
+func (m *ndf) share(order int) (share, alpha float64) {
+	sum := 0.0
+	for j := range order {
+		sum += m.inverse[j]
+	}
+	return m.inverse[order] + kappa(order)*sum, (1 - kappa(order)) * sum
+}
+
+// bend is the largest error within the step of the polynomial through its end and as many points before as the order says, beside the
+// divided difference of the unknowns of the next degree.
+func (m *ndf) bend(order int) float64 {
+	largest := 0.0
+	h := m.distance[0]
+	for _, s := range [...]float64{0.4, 0.6, 0.8} {
+		product := h * (1 - s)
+		for j := range order {
+			product *= m.distance[j] - h + s*h
+		}
+		largest = max(largest, product)
+	}
+	return bentMargin * largest
+}
+
+// bentMargin is what the largest of the places looked at may lack of the largest of all.
+const bentMargin = 1.1
+
+// judge estimates the error of every unknown at the end of the step and of its interpolation within.
+//
+// The error of the rates of the charges is carried to the unknowns by the Jacobian of the step. For unknowns without a charge the points are exact, but
+// the interpolation between them is not.
+func (m *ndf) judge() (float64, int, float64) {
+	if !m.started {
+		return m.starter.judge()
+	}
+	ratio, worst := m.largest(m.order)
+	if ratio > 1 {
+		m.listen()
+		ratio, worst = m.beyondNoise()
+	}
+	m.ratio = ratio
+	m.control.power = float64(m.order + 1)
+	h := m.distance[0]
+	if !(ratio <= 1) {
+		return ratio, worst, h * m.refuse(ratio)
+	}
+	return ratio, worst, h * m.propose(ratio)
+}
+
+// extend takes the differences to the attempted point, up to the given degree.
+func (m *ndf) extend(degree int) {
+	m.degree = degree
+	inverse := m.inverse[:degree]
+	for i := m.r.s.first(); i < len(m.x); i++ {
+		x, q := &m.nextX[i], &m.nextQ[i]
+		pastX, pastQ := &m.x[i], &m.q[i]
+		dx, dq := m.attempted.x[i], m.attempted.q[i]
+		x[0], q[0] = dx, dq
+		m.weights[i-m.r.s.first()] = m.r.weight(i, dx-pastX[0])
+		for j, s := range inverse {
+			dx, dq = (dx-pastX[j])*s, (dq-pastQ[j])*s
+			x[j+1], q[j+1] = dx, dq
+		}
+	}
+}
+
+// estimate returns the largest ratio of the estimated to the allowed error at the end of a step of the given order, whose differences must be known, and
+// where it is. It leaves the errors in the workspace's update.
+func (m *ndf) estimate(order int) (float64, int) {
+	w, r := m.r.w, m.r
+	first := r.s.first()
+	share, alpha := m.share(order)
+	scale := share * m.reach[order+1] * alpha * m.distance[0] * m.memory
+	for i := range w.update {
+		w.update[i] = scale * m.nextQ[first+i][order+1]
+	}
+	w.lu.Solve(w.update)
+	w.work.Solves++
+	ratio, worst := 0.0, 0
+	weights := m.weights[:len(w.update)]
+	for i, e := range w.update {
+		if e = math.Abs(e) * weights[i]; !(e <= ratio) {
+			ratio, worst = e, first+i
+			if !(e <= math.MaxFloat64) {
+				return math.Inf(1), worst
+			}
+		}
+	}
+	return ratio, worst
+}
+
+// largest returns the larger of the errors at the end of the step and within it.
+func (m *ndf) largest(order int) (float64, int) {
+	ratio, worst := m.estimate(order)
+	if b, at := m.bent(order); !(b <= ratio) {
+		ratio, worst = b, at
+	}
+	return ratio, worst
+}
+
+// bent returns the largest ratio of the estimated to the allowed error of the interpolation of the given order.
+func (m *ndf) bent(order int) (float64, int) {
+	scale := m.bend(order) / m.r.dense
+	ratio, worst := 0.0, 0
+	for i := m.r.s.first(); i < len(m.x); i++ {
+		if e := math.Abs(scale*m.nextX[i][order+1]) * m.weights[i-m.r.s.first()]; !(e <= ratio) {
+			ratio, worst = e, i
+			if !(e <= math.MaxFloat64) {
+				return math.Inf(1), i
+			}
+		}
+	}
+	return ratio, worst
+}
+
+// listen finds how much of the unknowns is rounding.
+func (m *ndf) listen() {
+	w := m.r.w
+	copy(m.error, w.update)
+	w.rounding(m.noise, m.alpha)
+}
+
+// differenceMargin is how many times the sum of the weights of a difference over equal steps the rounding of unknowns may count in it over others.
+const differenceMargin = 32
+
+// beyondNoise returns the largest error beside the allowed one after the rounding is taken off, which differences of high degree enlarge.
+func (m *ndf) beyondNoise() (float64, int) {
+	k, first := m.order, m.r.s.first()
+	bend := m.bend(k) / m.r.dense
+	share, _ := m.share(k)
+	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(share)*m.distance[0]*m.memory, bend/m.reach[k+1])
+	ratio, worst := 0.0, 0
+	for i, e := range m.error {
+		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*m.noise[i]
+		e *= m.weights[i]
+		if !(e <= math.MaxFloat64) {
+			return math.Inf(1), first + i
+		}
+		if e > ratio {
+			ratio, worst = e, first+i
+		}
+	}
+	return ratio, worst
+}

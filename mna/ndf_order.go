@@ -1,0 +1,156 @@
+package mna
+
+import "math"
+
+const (
+	// lowerGain and raiseGain are by how much longer a step another order must allow to be taken.
+	lowerGain = 1.2
+	raiseGain = 1.1
+	// growStart is the most that steps grow by as long as no error has limited them, growNDF later.
+	growStart = 3.0
+	growNDF   = 1.7
+	// patience is how many steps in a row may be refused before the past is given up.
+	patience = 3
+)
+
+// refuse returns the factor for another try.
+func (m *ndf) refuse(ratio float64) float64 {
+	m.ramp = false
+	m.newton.forget()
+	m.failures++
+	f := m.control.factor(ratio)
+	if k := m.order; m.failures >= patience {
+		// The error is not one of the step but of the past: a kink, or rounding that differences enlarge.
+		m.doubted = true
+	} else if k > 1 {
+		if below, _ := m.largest(k - 1); below < ratio {
+			m.setOrder(k - 1)
+		}
+	}
+	return f
+}
+
+// setOrder sets the order of the next step.
+func (m *ndf) setOrder(k int) {
+	m.order, m.since = k, 0
+	m.ratios = [ndfMost + 1]float64{}
+}
+
+// propose returns the factor for the next step after an accepted one, and sets its order.
+//
+// The order is chosen by the largest errors of some steps: the differences of a waveform pass through zero at different times.
+func (m *ndf) propose(ratio float64) float64 {
+	k := m.order
+	m.ramp = m.ramp && ratio <= 0.5
+	m.ratios[k] = max(m.ratios[k], ratio)
+	if m.ramp || (k-m.since)%2 == 0 {
+		if k > 1 {
+			below, _ := m.largest(k - 1)
+			m.ratios[k-1] = max(m.ratios[k-1], below)
+		}
+		if k < ndfMost && m.degree > k+1 {
+			above, _ := m.largest(k + 1)
+			m.ratios[k+1] = max(m.ratios[k+1], above)
+		}
+	}
+	most := growNDF
+	if m.ramp {
+		most = growStart
+	}
+	if m.ramp || m.since >= k {
+		if m.choices++; m.choices%recallEvery == 0 {
+			m.memory = m.recall()
+		}
+		if f := m.choose(); m.nextOrder != k {
+			return math.Min(f, most)
+		}
+	}
+	return math.Min(m.control.factor(ratio), most)
+}
+
+const (
+	// forgotten is the number of steps over which errors may add up in the same direction as far as the allowed error of a step provides for it.
+	forgotten = 60
+	// recallEvery is the number of choices of the order after which the memory is looked at again: it changes with the region the devices work in.
+	recallEvery = 3
+	// recallMost bounds what a longer memory takes off the allowed error.
+	recallMost = 16
+)
+
+// recall returns by how much the circuit's memory reduces the allowed error of a step: in a resonance, or behind a reservoir, what hundreds of steps leave adds up.
+//
+// Of an error e of the unknowns, e1 = A e with A = (G + alpha C)^-1 alpha C is what lasts longer than a step, and e2 = (2 A - 1) e1 what a trapezoidal step
+// of 2/alpha, which damps no oscillation, leaves of that. The energies of e1 and e2 tell how long it lasts. The lesser of two choices of the order counts: a
+// circuit with gain may enlarge an error at first.
+func (m *ndf) recall() float64 {
+	made, _ := m.estimate(m.order)
+	if made == 0 {
+		return 1
+	}
+	e := m.r.w.update
+	m.keep()
+	lasting := m.largestOf(e) / made
+	before := m.keep()
+	for i, v := range m.error {
+		e[i] = 2*e[i] - v
+	}
+	if after := m.energy(); after < before {
+		lasting *= math.Min(recallMost*forgotten, 4/(m.alpha*m.distance[0])*before/(before-after))
+	} else {
+		lasting *= recallMost * forgotten
+	}
+	lesser := math.Min(lasting, m.lasting)
+	m.lasting = lasting
+	return math.Max(1, math.Min(recallMost, lesser/forgotten))
+}
+
+// largestOf returns the largest of errors beside the allowed ones.
+func (m *ndf) largestOf(errors []float64) float64 {
+	largest := 0.0
+	for i, e := range errors {
+		largest = max(largest, math.Abs(e)*m.weights[i])
+	}
+	return largest
+}
+
+// keep applies (G + alpha C)^-1 alpha C to the workspace's update, leaves in m.error what that was before, and returns its energy.
+func (m *ndf) keep() float64 {
+	energy := m.energy()
+	m.r.w.lu.Solve(m.r.w.update)
+	m.r.w.work.Solves++
+	return energy
+}
+
+// energy moves the workspace's update to m.error and leaves alpha C times it there. It returns the energy, in W, that it stands for.
+func (m *ndf) energy() float64 {
+	w := m.r.w
+	copy(m.error, w.update)
+	w.chargeRates(w.update, m.error, m.alpha)
+	sum := 0.0
+	for i, e := range m.error {
+		sum += math.Abs(e * w.update[i])
+	}
+	return sum
+}
+
+// choose sets the order that allows the longest step, and returns the factor for it.
+func (m *ndf) choose() float64 {
+	k := m.order
+	best := plain(m.ratios[k], k)
+	if k > 1 {
+		if f := plain(m.ratios[k-1], k-1); f > lowerGain*best {
+			m.nextOrder, best = k-1, f
+		}
+	}
+	if k < ndfMost && m.ratios[k+1] > 0 {
+		if f := plain(m.ratios[k+1], k+1); f > raiseGain*best {
+			m.nextOrder, best = k+1, f
+		}
+	}
+	return best
+}
+
+// plain is the factor for the next step that the error of one step says.
+func plain(ratio float64, order int) float64 {
+	return math.Pow(math.Max(ratio, leastError)/aim, -1/float64(order+1))
+}
