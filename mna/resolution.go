@@ -64,13 +64,13 @@ func (z *resolution) lookAhead(signals []Signal, t, until float64) {
 func (z *resolution) anchor(x []float64) {
 	copy(z.low, x)
 	copy(z.high, x)
-	z.common, z.largest = 0, 0
+	z.common, z.largest = -1, 0 // below any floor
 	for i, v := range x {
 		if !z.branch[i] {
 			z.largest = max(z.largest, math.Abs(v))
 		}
 	}
-	z.raise(max(z.largest, math.SmallestNonzeroFloat64))
+	z.raise(z.largest)
 }
 
 // widen takes x into the swings.

@@ -531,6 +531,19 @@ func TestMaxStep(t *testing.T) {
 	transient(t, n.build(), TransientOptions{Until: 1, MaxStep: 3e-3}, func(p *Step) { require.LessOrEqual(t, p.T1-p.T0, 3e-3*(1+1e-9)) })
 }
 
+// TestNothingHappens: a circuit without a volt in it is followed to its end.
+func TestNothingHappens(t *testing.T) {
+	eachMethod(t, func(t *testing.T, method Method) {
+		n := newNet(t)
+		n.hold("in", sine{0, 1})
+		n.add("R", resistor(1e3), "in", "a")
+		n.add("R2", resistor(1e3), "a", "gnd")
+		n.add("C", capacitor{1e-6, 0}, "a", "gnd")
+		stats := transient(t, n.build(), TransientOptions{Until: 1, Method: method}, func(p *Step) { require.Zero(t, p.End()[n.u("a")]) })
+		require.Less(t, stats.Steps, 60)
+	})
+}
+
 // TestBlowUp integrates y' = y^2 from 1, which ends at t = 1.
 func TestBlowUp(t *testing.T) { eachMethod(t, blowUpIsReported) }
 
