@@ -12,7 +12,7 @@ package mna
 // evaluation is enough for most steps.
 const (
 	ndfMost   = 5
-	ndfDegree = ndfMost + 2 // of the highest divided difference
+	ndfDegree = ndfMost + 1 // of the highest divided difference
 	// ndfShare is the share of the accuracy that is allowed as the error of a step. Errors of up to a hundred steps that add up leave room for it; see
 	// forgotten for longer memories.
 	ndfShare = 0.03
@@ -124,7 +124,7 @@ func (m *ndf) attempt(end float64) error {
 	copy(a.x, e.X)
 	copy(a.q, e.Q)
 	a.setRate(e.F)
-	m.extend(min(m.known, m.order+2))
+	m.extend(min(m.known, m.order+2, ndfDegree))
 	m.ratio, m.nextOrder = 0, m.order
 	return nil
 }

@@ -37,8 +37,8 @@ func (m *ndf) judge() (float64, int, float64) {
 	if !m.started {
 		return m.starter.judge()
 	}
-	ratio, worst := m.largest(m.order)
-	if ratio > 1 {
+	ratio, worst := m.largest(m.order), m.r.worst
+	if !(ratio <= 1) {
 		m.listen()
 		ratio, worst = m.beyondNoise()
 	}
@@ -68,11 +68,10 @@ func (m *ndf) extend(degree int) {
 	}
 }
 
-// estimate returns the largest ratio of the estimated to the allowed error at the end of a step of the given order, whose differences must be known, and
-// where it is. It leaves the errors in the workspace's update.
-func (m *ndf) estimate(order int) (float64, int) {
-	w, r := m.r.w, m.r
-	first := r.s.first()
+// estimate returns the largest ratio of the estimated to the allowed error at the end of a step of the given order, whose differences must be known; NaN if an error
+// is. It leaves the errors in the workspace's update.
+func (m *ndf) estimate(order int) float64 {
+	w, first := m.r.w, m.r.s.first()
 	share, alpha := m.share(order)
 	scale := share * m.reach[order+1] * alpha * m.distance[0] * m.memory
 	for i := range w.update {
@@ -80,41 +79,28 @@ func (m *ndf) estimate(order int) (float64, int) {
 	}
 	w.lu.Solve(w.update)
 	w.work.Solves++
-	ratio, worst := 0.0, 0
-	weights := m.weights[:len(w.update)]
-	for i, e := range w.update {
-		if e = math.Abs(e) * weights[i]; !(e <= ratio) {
-			ratio, worst = e, first+i
-			if !(e <= math.MaxFloat64) {
-				return math.Inf(1), worst
-			}
-		}
+	return m.size(w.update)
+}
+
+// size returns the largest of errors beside the allowed ones, NaN if one is.
+func (m *ndf) size(errors []float64) float64 {
+	size, weights := 0.0, m.weights[:len(errors)]
+	for i, e := range errors {
+		size = max(size, math.Abs(e)*weights[i])
 	}
-	return ratio, worst
+	return size
 }
 
 // largest returns the larger of the errors at the end of the step and within it.
-func (m *ndf) largest(order int) (float64, int) {
-	ratio, worst := m.estimate(order)
-	if b, at := m.bent(order); !(b <= ratio) {
-		ratio, worst = b, at
-	}
-	return ratio, worst
-}
+func (m *ndf) largest(order int) float64 { return max(m.estimate(order), m.bent(order)) }
 
 // bent returns the largest ratio of the estimated to the allowed error of the interpolation of the given order.
-func (m *ndf) bent(order int) (float64, int) {
-	scale := m.bend(order) / m.r.dense
-	ratio, worst := 0.0, 0
-	for i := m.r.s.first(); i < len(m.x); i++ {
-		if e := math.Abs(scale*m.nextX[i][order+1]) * m.weights[i-m.r.s.first()]; !(e <= ratio) {
-			ratio, worst = e, i
-			if !(e <= math.MaxFloat64) {
-				return math.Inf(1), i
-			}
-		}
+func (m *ndf) bent(order int) float64 {
+	size, next := 0.0, m.nextX[m.r.s.first():]
+	for i, w := range m.weights {
+		size = max(size, math.Abs(next[i][order+1])*w)
 	}
-	return ratio, worst
+	return size * m.bend(order) / m.r.dense
 }
 
 // listen finds how much of the unknowns is rounding.

@@ -23,7 +23,7 @@ func (m *ndf) refuse(ratio float64) float64 {
 		// The error is not one of the step but of the past: a kink, or rounding that differences enlarge.
 		m.doubted = true
 	} else if k > 1 {
-		if below, _ := m.largest(k - 1); below < ratio {
+		if m.largest(k-1) < ratio {
 			m.setOrder(k - 1)
 		}
 	}
@@ -45,12 +45,10 @@ func (m *ndf) propose(ratio float64) float64 {
 	m.ratios[k] = max(m.ratios[k], ratio)
 	if m.ramp || (k-m.since)%2 == 0 {
 		if k > 1 {
-			below, _ := m.largest(k - 1)
-			m.ratios[k-1] = max(m.ratios[k-1], below)
+			m.ratios[k-1] = max(m.ratios[k-1], m.largest(k-1))
 		}
 		if k < ndfMost && m.degree > k+1 {
-			above, _ := m.largest(k + 1)
-			m.ratios[k+1] = max(m.ratios[k+1], above)
+			m.ratios[k+1] = max(m.ratios[k+1], m.largest(k+1))
 		}
 	}
 	most := growNDF
@@ -83,13 +81,13 @@ const (
 // of 2/alpha, which damps no oscillation, leaves of that. The energies of e1 and e2 tell how long it lasts. The lesser of two choices of the order counts: a
 // circuit with gain may enlarge an error at first.
 func (m *ndf) recall() float64 {
-	made, _ := m.estimate(m.order)
+	made := m.estimate(m.order)
 	if made == 0 {
 		return 1
 	}
 	e := m.r.w.update
 	m.keep()
-	lasting := m.largestOf(e) / made
+	lasting := m.size(e) / made
 	before := m.keep()
 	for i, v := range m.error {
 		e[i] = 2*e[i] - v
@@ -102,15 +100,6 @@ func (m *ndf) recall() float64 {
 	lesser := math.Min(lasting, m.lasting)
 	m.lasting = lasting
 	return math.Max(1, math.Min(recallMost, lesser/forgotten))
-}
-
-// largestOf returns the largest of errors beside the allowed ones.
-func (m *ndf) largestOf(errors []float64) float64 {
-	largest := 0.0
-	for i, e := range errors {
-		largest = max(largest, math.Abs(e)*m.weights[i])
-	}
-	return largest
 }
 
 // keep applies (G + alpha C)^-1 alpha C to the workspace's update, leaves in m.error what that was before, and returns its energy.

@@ -155,18 +155,15 @@ func (n *stageNewton) forget() {
 func (n *stageNewton) apply() (size float64, finite bool) {
 	w, first := n.r.w, n.r.s.first()
 	x, perError := w.eval.X[first:], n.r.perError[first:]
-	finite = true
 	for i, d := range w.update {
-		x[i] += d
-		d = math.Abs(d)
-		if !(d <= math.MaxFloat64) {
-			finite = false
+		v := x[i] + d
+		x[i] = v
+		if d = math.Abs(d); d <= roundingShare*math.Abs(v) && d <= math.MaxFloat64 {
+			d = 0
 		}
-		if d *= perError[i]; d > size && d > roundingShare*math.Abs(x[i])*perError[i] {
-			size = d
-		}
+		size = max(size, d*perError[i])
 	}
-	return size, finite
+	return size, size <= math.MaxFloat64
 }
 
 // carry moves the currents and charges in eval along an update: exact but for the square of a tiny step.

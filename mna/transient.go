@@ -333,12 +333,12 @@ func bit(t float64) float64 { return math.Nextafter(t, math.Inf(1)) - t }
 
 // target returns the end of the step to try.
 func (r *integration) target() float64 {
-	h := math.Min(r.h, r.o.Until/leastSteps)
+	h := min(r.h, r.o.Until/leastSteps)
 	if r.o.MaxStep > 0 {
-		h = math.Min(h, r.o.MaxStep)
+		h = min(h, r.o.MaxStep)
 	}
 	for _, signal := range r.s.signals {
-		h = math.Min(h, signal.Scale(r.t)/stepsPerScale)
+		h = min(h, signal.Scale(r.t)/stepsPerScale)
 	}
 	left := r.corner - r.t
 	switch {

@@ -82,9 +82,13 @@ func (w *workspace) evaluate(p *problem) {
 // assemble forms the residual and the Jacobian of the problem from the evaluation.
 func (w *workspace) assemble(p *problem) {
 	e := &w.eval
-	copy(w.residual, e.F)
-	for i, c := range p.constant {
-		w.residual[i] += c
+	if p.constant == nil {
+		copy(w.residual, e.F)
+	} else {
+		f := e.F[:len(w.residual)]
+		for i, c := range p.constant[:len(w.residual)] {
+			w.residual[i] = f[i] + c
+		}
 	}
 	if p.alpha != 0 {
 		w.addRates(p)
