@@ -185,6 +185,10 @@ func (f *LU[T]) column(k int32, values []T) error {
 			b.x[row] += v
 			continue
 		}
+		if n := len(b.off); n > int(b.offStart[k]) && b.offRow[n-1] == row {
+			b.off[n-1] += v // entries at the same place follow each other
+			continue
+		}
 		b.offRow, b.off = append(b.offRow, row), append(b.off, v)
 	}
 	for _, i := range b.reach[top:] {
