@@ -56,6 +56,9 @@ type StepError struct {
 }
 
 func (e *StepError) Error() string {
+	if errors.Is(e.Reason, errCreeping) {
+		return fmt.Sprintf("the integration stopped at %.9g s: %v, for %s (at %s)", e.Time, e.Reason, e.Unknown, list(e.Devices))
+	}
 	return fmt.Sprintf("the integration stopped at %.9g s: even the shortest step fails at %s (at %s): %v", e.Time, e.Unknown, list(e.Devices), e.Reason)
 }
 

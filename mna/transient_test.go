@@ -544,6 +544,24 @@ func TestNothingHappens(t *testing.T) {
 	})
 }
 
+// hurried is a signal that asks for steps so short that no end is in sight.
+type hurried struct{ level }
+
+func (hurried) Scale(float64) float64 { return 1e-15 }
+
+func TestARunThatGetsNowhereEnds(t *testing.T) {
+	n := newNet(t)
+	n.hold("in", hurried{1})
+	n.add("R", resistor(1e3), "in", "a")
+	n.add("C", capacitor{1e-6, 0}, "a", "gnd")
+	_, err := n.build().Transient(context.Background(), TransientOptions{Until: 1}, func(*Step) error { return nil })
+	var e *StepError
+	require.ErrorAs(t, err, &e)
+	require.ErrorIs(t, err, errCreeping)
+	require.Less(t, e.Time, creepShare)
+	require.NotContains(t, err.Error(), "shortest")
+}
+
 // TestBlowUp integrates y' = y^2 from 1, which ends at t = 1.
 func TestBlowUp(t *testing.T) { eachMethod(t, blowUpIsReported) }
 
