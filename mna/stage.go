@@ -26,14 +26,16 @@ type stageNewton struct {
 	update []float64 // of the free unknowns
 	known  bool      // there was one that tells something
 
-	bend   float64 // largest error after one update beside half of its square, in allowed errors, seen lately
-	unseen int     // updates since it was looked at
+	curvature float64 // largest error after one update beside half of its square, in allowed errors, seen lately
+	unseen    int     // updates since it was looked at
 }
 
 const (
-	// bendMargin is how many times what was seen lately the error after an update may be before it is looked at again, and looks how many updates may pass.
-	bendMargin = 300
-	bendLooks  = 4
+	// curvatureMargin is by how much the curvature may have grown since it was looked at: that of a junction grows by e for each thermal voltage, and by this
+	// much in nearly six of them.
+	curvatureMargin = 300
+	// curvatureLooks is the number of updates after which it is looked at again whatever it was.
+	curvatureLooks = 4
 )
 
 func newStageNewton(r *integration) stageNewton {
@@ -97,7 +99,7 @@ func (n *stageNewton) leaves(alpha, size float64) float64 {
 	if !n.known {
 		return math.Inf(1)
 	}
-	if n.unseen++; n.unseen < bendLooks && bendMargin*n.bend*size*size/2 <= stageShare {
+	if n.unseen++; n.unseen < curvatureLooks && curvatureMargin*n.curvature*size*size/2 <= stageShare {
 		return 0
 	}
 	change := n.changes(alpha)
@@ -109,7 +111,7 @@ func (n *stageNewton) leaves(alpha, size float64) float64 {
 	if moved == 0 {
 		return math.Inf(1)
 	}
-	n.unseen, n.bend = 0, max(change/(size*moved), n.bend/2)
+	n.unseen, n.curvature = 0, max(change/(size*moved), n.curvature/2)
 	return change * size / moved / 2
 }
 
@@ -148,7 +150,7 @@ func stall(i int) float64 {
 
 // forget makes the next stage learn anew how the derivatives change: something has happened in between.
 func (n *stageNewton) forget() {
-	n.known, n.unseen = false, bendLooks
+	n.known, n.unseen = false, curvatureLooks
 }
 
 // apply adds the update to the free unknowns and returns its size in allowed errors.
