@@ -4,7 +4,7 @@ import "math"
 
 // The controller of Gustafsson, Lundh & Soderlind, A PI stepsize control for the numerical solution of ordinary differential
 // equations, BIT 28, 1988, 270-287, for an error that goes with the k-th power of the step. They recommend gains of 0.7/k and 0.4/k; with an integral gain of
-// 0.9/k steps follow the decay of a disturbance faster and are refused no more often.
+// 0.9/k steps follow the decay of a disturbance faster, at the price of a few refusals more on a sine (31 instead of 12 of 1,125 on the hum of the pair).
 const (
 	safety       = 0.9
 	aim          = 0.35 // ratio of estimated to allowed error that steps are chosen for

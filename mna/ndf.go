@@ -69,7 +69,7 @@ type ndf struct {
 	reach        [ndfDegree + 1]float64 // s^m, product of the first m distances
 	alpha        float64                // 1/s
 	constant     []float64              // A, by unknown
-	ratio        float64                // of estimated to allowed error
+	ratio        float64                // of estimated to allowed error; 0 if it was not judged
 
 	// Of the free unknowns.
 	weights []float64 // 1/allowed error
@@ -115,7 +115,8 @@ func (m *ndf) attempt(end float64) error {
 	p := problem{time: m.r.inside(end), drive: 1, alpha: m.alpha, constant: m.constant, charge: m.newest.q}
 	if err := m.newton.solve(&p); err != nil {
 		m.newton.forget()
-		m.order, m.since, m.ramp = max(1, m.order-1), 0, false
+		m.ramp = false
+		m.setOrder(max(1, m.order-1))
 		return err
 	}
 	e := &m.r.w.eval
@@ -166,18 +167,21 @@ func (m *ndf) predict(x []float64) {
 }
 
 func (m *ndf) accept() {
-	if !m.started {
+	// A step whose error was not asked for is a jump, and the past says nothing about what follows.
+	jumped := !(m.ratio <= 1)
+	switch {
+	case !m.started:
 		m.starter.accept()
-		m.begin()
+		if m.begin(); jumped {
+			m.restart(m.starter.end())
+		}
 		return
-	}
-	m.control.accept()
-	if !(m.ratio <= 1) {
-		// The error was not asked for: this was a jump, and the past says nothing about what follows.
+	case jumped:
 		m.restart(&m.attempted)
 		m.last = afterJump
 		return
 	}
+	m.control.accept()
 	m.failures = 0
 	m.last = m.order
 	m.x, m.nextX = m.nextX, m.x

@@ -2,8 +2,9 @@ package mna
 
 import "math"
 
-// share is the error that a formula of the given order makes in dq/dt, beside the difference of the charges to their extrapolation, in 1/s.
-func (m *ndf) share(order int) (share, alpha float64) {
+// defect is the error that a formula of the given order makes in dq/dt beside the difference of the charges to their extrapolation, in 1/s. With it comes
+// the alpha of that order.
+func (m *ndf) defect(order int) (defect, alpha float64) {
 	sum := 0.0
 	for j := range order {
 		sum += m.inverse[j]
@@ -26,7 +27,7 @@ func (m *ndf) bend(order int) float64 {
 	return bentMargin * largest
 }
 
-// bentMargin is what the largest of the places looked at may lack of the largest of all.
+// bentMargin is by how much more than at the places looked at the polynomial may be off: over equal steps of any order it is 5 % at most.
 const bentMargin = 1.1
 
 // judge estimates the error of every unknown at the end of the step and of its interpolation within.
@@ -35,7 +36,9 @@ const bentMargin = 1.1
 // the interpolation between them is not.
 func (m *ndf) judge() (float64, int, float64) {
 	if !m.started {
-		return m.starter.judge()
+		ratio, worst, next := m.starter.judge()
+		m.ratio = ratio
+		return ratio, worst, next
 	}
 	ratio, worst := m.largest(m.order), m.r.worst
 	if !(ratio <= 1) {
@@ -72,8 +75,8 @@ func (m *ndf) extend(degree int) {
 // is. It leaves the errors in the workspace's update.
 func (m *ndf) estimate(order int) float64 {
 	w, first := m.r.w, m.r.s.first()
-	share, alpha := m.share(order)
-	scale := share * m.reach[order+1] * alpha * m.distance[0] * m.memory
+	defect, alpha := m.defect(order)
+	scale := defect * m.reach[order+1] * alpha * m.distance[0] * m.memory
 	for i := range w.update {
 		w.update[i] = scale * m.nextQ[first+i][order+1]
 	}
@@ -110,15 +113,16 @@ func (m *ndf) listen() {
 	w.rounding(m.noise, m.alpha)
 }
 
-// differenceMargin is how many times the sum of the weights of a difference over equal steps the rounding of unknowns may count in it over others.
+// differenceMargin is by how much the weights of a difference may exceed those over equal steps, whose sum is a power of two: nearly what they do at order 4 if
+// each step was growNDF times the one before.
 const differenceMargin = 32
 
 // beyondNoise returns the largest error beside the allowed one after the rounding is taken off, which differences of high degree enlarge.
 func (m *ndf) beyondNoise() (float64, int) {
 	k, first := m.order, m.r.s.first()
 	bend := m.bend(k) / m.r.dense
-	share, _ := m.share(k)
-	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(share)*m.distance[0]*m.memory, bend/m.reach[k+1])
+	defect, _ := m.defect(k)
+	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(defect)*m.distance[0]*m.memory, bend/m.reach[k+1])
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
 		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*m.noise[i]

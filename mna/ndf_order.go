@@ -9,6 +9,8 @@ const (
 	// growStart is the most that steps grow by as long as no error has limited them, growNDF later.
 	growStart = 3.0
 	growNDF   = 1.7
+	// rampMost is the ratio of estimated to allowed error up to which a step counts as limited by its growth alone.
+	rampMost = 0.5
 	// patience is how many steps in a row may be refused before the past is given up.
 	patience = 3
 )
@@ -22,10 +24,8 @@ func (m *ndf) refuse(ratio float64) float64 {
 	if k := m.order; m.failures >= patience {
 		// The error is not one of the step but of the past: a kink, or rounding that differences enlarge.
 		m.doubted = true
-	} else if k > 1 {
-		if m.largest(k-1) < ratio {
-			m.setOrder(k - 1)
-		}
+	} else if k > 1 && m.largest(k-1) < ratio {
+		m.setOrder(k - 1)
 	}
 	return f
 }
@@ -41,7 +41,8 @@ func (m *ndf) setOrder(k int) {
 // The order is chosen by the largest errors of some steps: the differences of a waveform pass through zero at different times.
 func (m *ndf) propose(ratio float64) float64 {
 	k := m.order
-	m.ramp = m.ramp && ratio <= 0.5
+	f := m.control.factor(ratio)
+	m.ramp = m.ramp && ratio <= rampMost
 	m.ratios[k] = max(m.ratios[k], ratio)
 	if m.ramp || (k-m.since)%2 == 0 {
 		if k > 1 {
@@ -59,15 +60,16 @@ func (m *ndf) propose(ratio float64) float64 {
 		if m.choices++; m.choices%recallEvery == 0 {
 			m.memory = m.recall()
 		}
-		if f := m.choose(); m.nextOrder != k {
-			return math.Min(f, most)
+		if other := m.choose(); m.nextOrder != k {
+			f = other
 		}
 	}
-	return math.Min(m.control.factor(ratio), most)
+	return math.Min(f, most)
 }
 
 const (
-	// forgotten is the number of steps over which errors may add up in the same direction as far as the allowed error of a step provides for it.
+	// forgotten is the number of steps over which errors may add up in the same direction: ndfShare times the aim of a step times 95 is the accuracy, less a third for
+	// errors above the aim.
 	forgotten = 60
 	// recallEvery is the number of choices of the order after which the memory is looked at again: it changes with the region the devices work in.
 	recallEvery = 3
