@@ -89,7 +89,7 @@ func TestYardstick(t *testing.T) {
 		bench  string
 		finest float64
 		most   int // evaluations at the default accuracy
-	}{{"hum", 1e-6, 1500}, {"burst", 1e-6, 280}, {"carrier", 1e-6, 90_000}} {
+	}{{"hum", 1e-6, 1300}, {"burst", 1e-6, 270}, {"carrier", 1e-6, 66_000}} {
 		last := math.Inf(1)
 		for _, accuracy := range []float64{1e-3, 1e-4, 1e-5, 1e-6} {
 			if accuracy < c.finest || testing.Short() && c.bench == "carrier" {

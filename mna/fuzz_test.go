@@ -186,7 +186,7 @@ func denseEquations(s *System) (*mat.Dense, *mat.VecDense, int) {
 func TestRandomTransients(t *testing.T) { eachMethod(t, randomTransientsAgree) }
 
 func randomTransientsAgree(t *testing.T, method Method) {
-	const networks, until, looked = 60, 2e-3, 97
+	const networks, until, looked = 150, 2e-3, 97
 	// A run returns samples and the swing of every unknown over all of its steps.
 	run := func(s *System, o TransientOptions) (samples [][]float64, swing []float64, stats *TransientStats, err error) {
 		o.Until = until

@@ -13,9 +13,9 @@ package mna
 const (
 	ndfMost   = 5
 	ndfDegree = ndfMost + 1 // of the highest divided difference
-	// ndfShare is the share of the accuracy that is allowed as the error of a step. Errors of up to a hundred steps that add up leave room for it; see
-	// forgotten for longer memories.
-	ndfShare = 0.03
+	// ndfShare is the share of the accuracy that is allowed as the error of a step. Errors that add up over a dozen steps leave room for it; see forgotten for
+	// longer memories.
+	ndfShare = 0.1
 )
 
 // kappa returns the coefficient of a formula, from table 1 of the paper.
@@ -52,7 +52,7 @@ type ndf struct {
 	ratios    [ndfMost + 1]float64 // largest of estimated to allowed error since the last choice, by order
 	nextOrder int                  // after the attempted step
 	memory    float64              // by how much the allowed error is reduced, see recall
-	lasting   float64              // number of steps that the share of an error that lasts does, when it was looked at last
+	fading    float64              // share of an error that a step takes away, in the mean over the last times it was looked at
 
 	// The past.
 	known  int                // points that the differences rest on
@@ -69,6 +69,7 @@ type ndf struct {
 	reach        [ndfDegree + 1]float64 // s^m, product of the first m distances
 	alpha        float64                // 1/s
 	constant     []float64              // A, by unknown
+	kink         float64                // how little the past says of the newest point, 0..1
 	ratio        float64                // of estimated to allowed error; 0 if it was not judged
 
 	// Of the free unknowns.

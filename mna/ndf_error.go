@@ -2,18 +2,35 @@ package mna
 
 import "math"
 
-// defect is the error that a formula of the given order makes in dq/dt beside the difference of the charges to their extrapolation, in 1/s. With it comes
-// the alpha of that order.
+// The errors of a formula and of the interpolation are known beside the departure of the newest point from the extrapolation E of the past, as long as that
+// comes from the next higher derivative. Where the past says nothing about what came (a junction has turned on), departures from the extrapolations of all
+// degrees are the same, and the errors are a good part of it.
+const (
+	// leastDefect is the least part of the error of a backward differentiation formula that is expected of the formula made of it: that of order 3 over equal
+	// steps. Over others kappa may cancel the first term of the error altogether, and the next ones count.
+	leastDefect = 0.4
+	// kinkDefect is the error of a step beside the departure, for a slope that sets in at its start: a backward Euler step takes the whole of a charge
+	// of which half has come.
+	kinkDefect = 0.5
+	// kinkBend is that of the interpolation: the largest difference between a slope that sets in half-way and a polynomial through its end and the five points
+	// before.
+	kinkBend = 0.3
+)
+
+// defect is the error that a formula of the given order makes in h dq/dt, beside the departure of the charges from the extrapolation. With it comes the
+// alpha of that order.
 func (m *ndf) defect(order int) (defect, alpha float64) {
 	sum := 0.0
 	for j := range order {
 		sum += m.inverse[j]
 	}
-	return m.inverse[order] + kappa(order)*sum, (1 - kappa(order)) * sum
+	own := m.inverse[order]
+	smooth := m.distance[0] * max(math.Abs(own+kappa(order)*sum), leastDefect*own)
+	return max(smooth, kinkDefect*m.kink), (1 - kappa(order)) * sum
 }
 
-// bend is the largest error within the step of the polynomial through its end and as many points before as the order says, beside the
-// divided difference of the unknowns of the next degree.
+// bend is the largest error within the step of the polynomial through its end and as many points before as the order says, beside the departure of the
+// unknowns from their extrapolation.
 func (m *ndf) bend(order int) float64 {
 	largest := 0.0
 	h := m.distance[0]
@@ -24,11 +41,37 @@ func (m *ndf) bend(order int) float64 {
 		}
 		largest = max(largest, product)
 	}
-	return bentMargin * largest
+	return max(bentMargin*largest/m.reach[order+1], kinkBend*m.kink)
 }
 
 // bentMargin is by how much more than at the places looked at the polynomial may be off: over equal steps of any order it is 5 % at most.
 const bentMargin = 1.1
+
+// surprise returns how little of the newest point the past foretold: the share of the departure that is left when the extrapolation rises by two degrees, where
+// departure times share is largest. Of a smooth waveform it is next to nothing, after a kink 1. The larger departure of two degrees is taken as the one from
+// below: differences of a waveform pass through zero.
+func (m *ndf) surprise() float64 {
+	k, next := m.order, m.nextX[m.r.s.first():]
+	now, before, earlier := m.reach[k+1], m.reach[k], m.reach[k-1]
+	if k == 1 {
+		earlier = 0 // an unknown is no departure
+	}
+	departure, surprise := 0.0, 0.0
+	for i, w := range m.weights {
+		d := &next[i]
+		from := max(math.Abs(d[k])*before, math.Abs(d[k-1])*earlier) * w
+		to := math.Abs(d[k+1]) * now * w
+		departure = max(departure, to)
+		if to < from {
+			to *= to / from // the departure times the share
+		}
+		surprise = max(surprise, to)
+	}
+	if departure == 0 {
+		return 0
+	}
+	return surprise / departure
+}
 
 // judge estimates the error of every unknown at the end of the step and of its interpolation within.
 //
@@ -40,6 +83,7 @@ func (m *ndf) judge() (float64, int, float64) {
 		m.ratio = ratio
 		return ratio, worst, next
 	}
+	m.kink = m.surprise()
 	ratio, worst := m.largest(m.order), m.r.worst
 	if !(ratio <= 1) {
 		m.listen()
@@ -76,7 +120,7 @@ func (m *ndf) extend(degree int) {
 func (m *ndf) estimate(order int) float64 {
 	w, first := m.r.w, m.r.s.first()
 	defect, alpha := m.defect(order)
-	scale := defect * m.reach[order+1] * alpha * m.distance[0] * m.memory
+	scale := defect * m.reach[order+1] * alpha * m.memory
 	for i := range w.update {
 		w.update[i] = scale * m.nextQ[first+i][order+1]
 	}
@@ -103,7 +147,7 @@ func (m *ndf) bent(order int) float64 {
 	for i, w := range m.weights {
 		size = max(size, math.Abs(next[i][order+1])*w)
 	}
-	return size * m.bend(order) / m.r.dense
+	return size * m.reach[order+1] * m.bend(order) / m.r.dense
 }
 
 // listen finds how much of the unknowns is rounding.
@@ -120,9 +164,10 @@ const differenceMargin = 32
 // beyondNoise returns the largest error beside the allowed one after the rounding is taken off, which differences of high degree enlarge.
 func (m *ndf) beyondNoise() (float64, int) {
 	k, first := m.order, m.r.s.first()
-	bend := m.bend(k) / m.r.dense
 	defect, _ := m.defect(k)
-	margin := differenceMargin * math.Ldexp(1, k+1) * math.Max(math.Abs(defect)*m.distance[0]*m.memory, bend/m.reach[k+1])
+	bend := m.bend(k) / m.r.dense
+	margin := differenceMargin * math.Ldexp(1, k+1) * max(defect*m.memory, bend)
+	bend *= m.reach[k+1]
 	ratio, worst := 0.0, 0
 	for i, e := range m.error {
 		e = max(math.Abs(e), math.Abs(bend*m.nextX[first+i][k+1])) - margin*m.noise[i]

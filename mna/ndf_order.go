@@ -68,20 +68,22 @@ func (m *ndf) propose(ratio float64) float64 {
 }
 
 const (
-	// forgotten is the number of steps over which errors may add up in the same direction: ndfShare times the aim of a step times 95 is the accuracy, less a third for
-	// errors above the aim.
-	forgotten = 60
+	// forgotten is the number of steps over which errors may add up in the same direction: at the error that steps are chosen for, they come to half of the
+	// accuracy.
+	forgotten = 0.5 / (ndfShare * aim)
 	// recallEvery is the number of choices of the order after which the memory is looked at again: it changes with the region the devices work in.
 	recallEvery = 3
-	// recallMost bounds what a longer memory takes off the allowed error.
-	recallMost = 16
+	// recallMost bounds what a longer memory takes off the allowed error: a resonance that rings over a quarter of a million steps needs it.
+	recallMost = 1e4
+	// recallWeight is that of the newest look in the mean: a rectifier forgets while it conducts and remembers in between, and a circuit with gain may
+	// enlarge an error at first.
+	recallWeight = 0.25
 )
 
 // recall returns by how much the circuit's memory reduces the allowed error of a step: in a resonance, or behind a reservoir, what hundreds of steps leave adds up.
 //
 // Of an error e of the unknowns, e1 = A e with A = (G + alpha C)^-1 alpha C is what lasts longer than a step, and e2 = (2 A - 1) e1 what a trapezoidal step
-// of 2/alpha, which damps no oscillation, leaves of that. The energies of e1 and e2 tell how long it lasts. The lesser of two choices of the order counts: a
-// circuit with gain may enlarge an error at first.
+// of 2/alpha, which damps no oscillation, leaves of that. The energies of e1 and e2 tell how long it lasts; not longer than the run.
 func (m *ndf) recall() float64 {
 	made := m.estimate(m.order)
 	if made == 0 {
@@ -94,14 +96,16 @@ func (m *ndf) recall() float64 {
 	for i, v := range m.error {
 		e[i] = 2*e[i] - v
 	}
+	steps := m.r.o.Until / m.distance[0]
 	if after := m.energy(); after < before {
-		lasting *= math.Min(recallMost*forgotten, 4/(m.alpha*m.distance[0])*before/(before-after))
-	} else {
-		lasting *= recallMost * forgotten
+		steps = min(steps, 4/(m.alpha*m.distance[0])*before/(before-after))
 	}
-	lesser := math.Min(lasting, m.lasting)
-	m.lasting = lasting
-	return math.Max(1, math.Min(recallMost, lesser/forgotten))
+	fading := 1 / max(1, lasting*steps)
+	if m.fading == 0 {
+		m.fading = fading
+	}
+	m.fading += recallWeight * (fading - m.fading)
+	return max(1, min(recallMost, 1/(m.fading*forgotten)))
 }
 
 // keep applies (G + alpha C)^-1 alpha C to the workspace's update, leaves in m.error what that was before, and returns its energy.

@@ -21,7 +21,7 @@ const (
 
 	trbdf2Order = 2
 	// trbdf2Share is the share of the accuracy that is allowed as the error of a step: errors of many steps add up.
-	trbdf2Share = 0.05
+	trbdf2Share = 0.07
 )
 
 // trbdf2 is the TR-BDF2 method.
