@@ -28,9 +28,12 @@ func newControl(power float64) control { return control{power: power} }
 // restart forgets the past.
 func (c *control) restart() { c.last, c.rejected = 0, false }
 
+// excess is the logarithm of a ratio of estimated to allowed error beside the aim.
+func excess(ratio float64) float64 { return math.Log(max(ratio, leastError) / aim) }
+
 // factor returns by what the step should be multiplied after one with this ratio of estimated to allowed error.
 func (c *control) factor(ratio float64) float64 {
-	c.now = math.Log(math.Max(ratio, leastError) / aim)
+	c.now = excess(ratio)
 	if !(ratio <= 1) {
 		c.rejected = true
 		if math.IsNaN(ratio) || math.IsInf(ratio, 1) {

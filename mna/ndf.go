@@ -49,7 +49,7 @@ type ndf struct {
 	ramp      bool                 // no step since the start was limited by its error
 	since     int                  // accepted steps since the last choice
 	choices   int                  // made so far
-	ratios    [ndfMost + 1]float64 // largest of estimated to allowed error since the last choice, by order
+	room      [ndfMost + 1]float64 // logarithm of the factor that the steps of each order could have been longer by, the least since the last choice
 	nextOrder int                  // after the attempted step
 	memory    float64              // by how much the allowed error is reduced, see recall
 	fading    float64              // share of an error that a step takes away, in the mean over the last times it was looked at

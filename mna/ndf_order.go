@@ -3,9 +3,9 @@ package mna
 import "math"
 
 const (
-	// lowerGain and raiseGain are by how much longer a step another order must allow to be taken.
-	lowerGain = 1.2
-	raiseGain = 1.1
+	// lowerGain and raiseGain are logarithms of how much longer a step another order must allow to be taken: a fifth and a tenth.
+	lowerGain = 0.182
+	raiseGain = 0.095
 	// growStart is the most that steps grow by as long as no error has limited them, growNDF later.
 	growStart = 3.0
 	growNDF   = 1.7
@@ -33,7 +33,9 @@ func (m *ndf) refuse(ratio float64) float64 {
 // setOrder sets the order of the next step.
 func (m *ndf) setOrder(k int) {
 	m.order, m.since = k, 0
-	m.ratios = [ndfMost + 1]float64{}
+	for i := range m.room {
+		m.room[i] = math.Inf(1)
+	}
 }
 
 // propose returns the factor for the next step after an accepted one, and sets its order.
@@ -43,13 +45,13 @@ func (m *ndf) propose(ratio float64) float64 {
 	k := m.order
 	f := m.control.factor(ratio)
 	m.ramp = m.ramp && ratio <= rampMost
-	m.ratios[k] = max(m.ratios[k], ratio)
+	m.room[k] = min(m.room[k], -m.control.now/float64(k+1))
 	if m.ramp || (k-m.since)%2 == 0 {
 		if k > 1 {
-			m.ratios[k-1] = max(m.ratios[k-1], m.largest(k-1))
+			m.consider(k-1, lowerGain)
 		}
 		if k < ndfMost && m.degree > k+1 {
-			m.ratios[k+1] = max(m.ratios[k+1], m.largest(k+1))
+			m.consider(k+1, raiseGain)
 		}
 	}
 	most := growNDF
@@ -128,24 +130,27 @@ func (m *ndf) energy() float64 {
 	return sum
 }
 
+// consider takes the error of another order into the choice. Where the interpolation alone rules it out, the error at the end of the step is not asked for.
+func (m *ndf) consider(order int, gain float64) {
+	ratio := m.bent(order)
+	room := -excess(ratio) / float64(order+1)
+	if room > m.room[m.order]+gain {
+		if end := m.estimate(order); !(end <= ratio) {
+			room = -excess(end) / float64(order+1)
+		}
+	}
+	m.room[order] = min(m.room[order], room)
+}
+
 // choose sets the order that allows the longest step, and returns the factor for it.
 func (m *ndf) choose() float64 {
 	k := m.order
-	best := plain(m.ratios[k], k)
-	if k > 1 {
-		if f := plain(m.ratios[k-1], k-1); f > lowerGain*best {
-			m.nextOrder, best = k-1, f
-		}
+	best := m.room[k]
+	if k > 1 && m.room[k-1] > best+lowerGain {
+		m.nextOrder, best = k-1, m.room[k-1]
 	}
-	if k < ndfMost && m.ratios[k+1] > 0 {
-		if f := plain(m.ratios[k+1], k+1); f > raiseGain*best {
-			m.nextOrder, best = k+1, f
-		}
+	if k < ndfMost && m.room[k+1] > best+raiseGain && !math.IsInf(m.room[k+1], 1) {
+		m.nextOrder, best = k+1, m.room[k+1]
 	}
-	return best
-}
-
-// plain is the factor for the next step that the error of one step says.
-func plain(ratio float64, order int) float64 {
-	return math.Pow(math.Max(ratio, leastError)/aim, -1/float64(order+1))
+	return math.Exp(best)
 }
