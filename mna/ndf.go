@@ -58,10 +58,10 @@ type ndf struct {
 	known  int                // points that the differences rest on
 	times  [ndfDegree]float64 // s, the newest first
 	x, q   []ladder           // at the newest point, by unknown
-	newest point
+	newest point              // without rates
 
 	// The attempted step.
-	attempted    point
+	attempted    point                  // without rates
 	nextX, nextQ []ladder               // the differences if it is accepted
 	degree       int                    // up to which they are known
 	distance     [ndfDegree]float64     // s, from the points before
@@ -70,6 +70,7 @@ type ndf struct {
 	alpha        float64                // 1/s
 	constant     []float64              // A, by unknown
 	kink         float64                // how little the past says of the newest point, 0..1
+	departure    float64                // of it from the past, the largest of all unknowns beside the allowed error
 	ratio        float64                // of estimated to allowed error; 0 if it was not judged
 
 	// Of the free unknowns.
@@ -106,6 +107,7 @@ func (m *ndf) end() *point {
 // attempt solves the equations at the end of the step, in s.
 func (m *ndf) attempt(end float64) error {
 	if m.doubted {
+		m.r.slope(&m.newest)
 		m.restart(&m.newest)
 	}
 	if !m.started {
@@ -125,7 +127,6 @@ func (m *ndf) attempt(end float64) error {
 	a.t = end
 	copy(a.x, e.X)
 	copy(a.q, e.Q)
-	a.setRate(e.F)
 	m.extend(min(m.known, m.order+2, ndfDegree))
 	m.ratio, m.nextOrder = 0, m.order
 	return nil
@@ -178,6 +179,7 @@ func (m *ndf) accept() {
 		}
 		return
 	case jumped:
+		m.r.slope(&m.attempted)
 		m.restart(&m.attempted)
 		m.last = afterJump
 		return
@@ -226,7 +228,6 @@ func (m *ndf) append(p *point) {
 	m.newest.t = p.t
 	copy(m.newest.x, p.x)
 	copy(m.newest.q, p.q)
-	copy(m.newest.rate, p.rate)
 }
 
 // interpolate takes the polynomial through the end of the last step and as many points before it as its order has.

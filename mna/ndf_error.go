@@ -47,30 +47,32 @@ func (m *ndf) bend(order int) float64 {
 // bentMargin is by how much more than at the places looked at the polynomial may be off: over equal steps of any order it is 5 % at most.
 const bentMargin = 1.1
 
-// surprise returns how little of the newest point the past foretold: the share of the departure that is left when the extrapolation rises by two degrees, where
-// departure times share is largest. Of a smooth waveform it is next to nothing, after a kink 1. The larger departure of two degrees is taken as the one from
-// below: differences of a waveform pass through zero.
-func (m *ndf) surprise() float64 {
+// look sees how far the newest point departs from the past, and how little of it the past foretold: the share of the departure that is left when the
+// extrapolation rises by two degrees, where departure times share is largest. Of a smooth waveform it is next to nothing, after a kink 1. The larger departure of
+// two degrees is taken as the one from below: differences of a waveform pass through zero.
+func (m *ndf) look() {
 	k, next := m.order, m.nextX[m.r.s.first():]
 	now, before, earlier := m.reach[k+1], m.reach[k], m.reach[k-1]
 	if k == 1 {
 		earlier = 0 // an unknown is no departure
 	}
-	departure, surprise := 0.0, 0.0
+	departure, left := 0.0, 0.0
 	for i, w := range m.weights {
 		d := &next[i]
-		from := max(math.Abs(d[k])*before, math.Abs(d[k-1])*earlier) * w
 		to := math.Abs(d[k+1]) * now * w
 		departure = max(departure, to)
-		if to < from {
-			to *= to / from // the departure times the share
+		if to <= left {
+			continue
 		}
-		surprise = max(surprise, to)
+		if from := max(math.Abs(d[k])*before, math.Abs(d[k-1])*earlier) * w; to < from {
+			to *= to / from
+		}
+		left = max(left, to)
 	}
-	if departure == 0 {
-		return 0
+	m.departure, m.kink = departure, 0
+	if departure != 0 {
+		m.kink = left / departure
 	}
-	return surprise / departure
 }
 
 // judge estimates the error of every unknown at the end of the step and of its interpolation within.
@@ -83,8 +85,8 @@ func (m *ndf) judge() (float64, int, float64) {
 		m.ratio = ratio
 		return ratio, worst, next
 	}
-	m.kink = m.surprise()
-	ratio, worst := m.largest(m.order), m.r.worst
+	m.look()
+	ratio, worst := max(m.estimate(m.order), m.departure*m.bend(m.order)/m.r.dense), m.r.worst
 	if !(ratio <= 1) {
 		m.listen()
 		ratio, worst = m.beyondNoise()

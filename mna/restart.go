@@ -41,6 +41,15 @@ func (r *integration) begin() error {
 	return r.enter(&from)
 }
 
+// slope fills in the rates of a point.
+func (r *integration) slope(p *point) {
+	w := r.w
+	copy(w.eval.X, p.x)
+	w.eval.Limit = false
+	w.evaluate(&problem{time: r.inside(p.t), drive: 1, alpha: 1})
+	p.setRate(w.eval.F)
+}
+
 // enter starts afresh at a corner from the charges just before it.
 func (r *integration) enter(from *point) error {
 	r.stats.Restarts++
@@ -175,7 +184,8 @@ func (r *integration) euler(from *point, t, h float64, climb bool) (*point, erro
 	n, err := w.newton(r.ctx, &p, biasIterations)
 	switch {
 	case err == nil:
-		w.carry(w.update)
+		w.carryCharges(w.update)
+		w.carryCurrents(w.update)
 	case climb:
 		c := r.s.newClimb(r.ctx, w, p, r.log)
 		c.iterations = n

@@ -46,7 +46,7 @@ func newStageNewton(r *integration) stageNewton {
 	}
 }
 
-// solve solves p from eval.X. It leaves in eval the currents and charges of the solution.
+// solve solves p from eval.X. It leaves the charges of the solution in eval, and the currents before the last update.
 func (n *stageNewton) solve(p *problem) error {
 	w := n.r.w
 	e := &w.eval
@@ -69,7 +69,7 @@ func (n *stageNewton) solve(p *problem) error {
 			continue
 		case size <= stageShare, n.leaves(p.alpha, size) <= stageShare, last > 0 && size > stallRatio*last && n.movement() <= stall(i):
 			n.note()
-			w.carry(n.update)
+			w.carryCharges(n.update)
 			return nil
 		}
 		n.note()
@@ -168,13 +168,19 @@ func (n *stageNewton) apply() (size float64, finite bool) {
 	return size, size <= math.MaxFloat64
 }
 
-// carry moves the currents and charges in eval along an update: exact but for the square of a tiny step.
-func (w *workspace) carry(update []float64) {
-	e, first := &w.eval, int32(w.sys.first())
-	f, q, g, c := e.F, e.Q, e.G, e.C
+// carryCharges moves the charges in eval along an update: exact but for the square of a tiny step.
+func (w *workspace) carryCharges(update []float64) {
+	w.carry(w.eval.Q, w.eval.C, update)
+}
+
+// carryCurrents does the same for the currents.
+func (w *workspace) carryCurrents(update []float64) {
+	w.carry(w.eval.F, w.eval.G, update)
+}
+
+func (w *workspace) carry(values, slopes, update []float64) {
+	first := int32(w.sys.first())
 	for _, p := range w.sys.free {
-		d := update[p.col-first]
-		f[p.row] += g[p.slot] * d
-		q[p.row] += c[p.slot] * d
+		values[p.row] += slopes[p.slot] * update[p.col-first]
 	}
 }

@@ -102,6 +102,7 @@ func (m *trbdf2) stage(p *point, t, alpha float64) error {
 	if err := m.newton.solve(&problem); err != nil {
 		return err
 	}
+	m.r.w.carryCurrents(m.newton.update)
 	p.t = t
 	copy(p.x, m.r.w.eval.X)
 	copy(p.q, m.r.w.eval.Q)
