@@ -35,7 +35,7 @@ const (
 	// much in nearly six of them.
 	curvatureMargin = 300
 	// curvatureLooks is the number of updates after which it is looked at again whatever it was.
-	curvatureLooks = 4
+	curvatureLooks = 8
 )
 
 func newStageNewton(r *integration) stageNewton {
