@@ -60,8 +60,8 @@ func (s *bipolarStamp) junctions(e *mna.Eval) (u1, u2, v1, v2 float64) {
 	u1, u2 = v1, v2
 	if e.Limit {
 		var l1, l2 bool
-		u1, l1 = s.forward.limit(v1, e.Junctions[s.state1])
-		u2, l2 = s.reverse.limit(v2, e.Junctions[s.state2])
+		u1, l1 = s.forward.shorten(v1, e.Junctions[s.state1])
+		u2, l2 = s.reverse.shorten(v2, e.Junctions[s.state2])
 		e.Limited = e.Limited || l1 || l2
 	}
 	e.Junctions[s.state1], e.Junctions[s.state2] = u1, u2

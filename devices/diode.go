@@ -112,7 +112,7 @@ func (d *diode) current(v float64) (i, g, forward, slope float64) {
 	forward, slope = d.forward.at(v)
 	i, g = forward, slope
 	if d.breakVolt < inf {
-		x, y := expLinear(-(v + d.breakVolt) * d.breakdown.inverse)
+		x, y := d.breakdown.exp(-(v + d.breakVolt))
 		i -= d.breakdown.is * x
 		g += d.breakdown.gain * y
 	}
@@ -122,10 +122,10 @@ func (d *diode) current(v float64) (i, g, forward, slope float64) {
 // limit shortens the junction's steps, in breakdown with the voltage reversed.
 func (d *diode) limit(v, last float64) (float64, bool) {
 	if d.breakVolt < inf && v < -d.breakVolt {
-		u, limited := d.breakdown.limit(-(v + d.breakVolt), -(last + d.breakVolt))
+		u, limited := d.breakdown.shorten(-(v + d.breakVolt), -(last + d.breakVolt))
 		return -u - d.breakVolt, limited
 	}
-	return d.forward.limit(v, last)
+	return d.forward.shorten(v, last)
 }
 
 func (s *diodeStamp) Eval(e *mna.Eval) {

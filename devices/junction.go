@@ -2,15 +2,24 @@ package devices
 
 import "math"
 
-// exponentLimit is the exponent above which the exponential goes on linearly, with its value and slope there.
+// exponentLimit is the exponent above which an exponential goes on linearly, with its value and slope there.
 const exponentLimit = 80
 
-var limitExp = math.Exp(exponentLimit)
+// A junction's goes on to this current at least: in the cold, saturation currents are so small that an exponent of 80 is still nothing.
+const (
+	linearCurrent = 1e6 // A
+	exponentMost  = 700
+)
+
+var greatestExp = math.Exp(exponentLimit)
 
 // expLinear returns exp(x), continued linearly above exponentLimit, and its derivative.
-func expLinear(x float64) (value, slope float64) {
-	if x > exponentLimit {
-		return limitExp * (1 + x - exponentLimit), limitExp
+func expLinear(x float64) (value, slope float64) { return continued(x, exponentLimit, greatestExp) }
+
+// continued returns exp(x), continued linearly above limit, where it is top, and its derivative.
+func continued(x, limit, top float64) (value, slope float64) {
+	if x > limit {
+		return top * (1 + x - limit), top
 	}
 	value = exp(x)
 	return value, value
@@ -23,11 +32,14 @@ type exponential struct {
 	inverse float64 // 1/V
 	gain    float64 // is/nVt, S
 	knee    float64 // V, where the current's curvature makes Newton's method overshoot
+	limit   float64 // exponent above which it is linear
+	top     float64 // exp(limit)
 }
 
 func newExponential(is, nVt float64) exponential {
 	knee := nVt * math.Log(nVt/(math.Sqrt2*is))
-	return exponential{is: is, nVt: nVt, inverse: 1 / nVt, gain: is / nVt, knee: knee}
+	limit := min(max(exponentLimit, math.Log(linearCurrent/is)), exponentMost)
+	return exponential{is: is, nVt: nVt, inverse: 1 / nVt, gain: is / nVt, knee: knee, limit: limit, top: math.Exp(limit)}
 }
 
 // at returns the current in A and its slope in S at v volts.
@@ -35,8 +47,13 @@ func (x *exponential) at(v float64) (i, g float64) {
 	if x.is == 0 {
 		return 0, 0
 	}
-	value, slope := expLinear(v * x.inverse)
+	value, slope := x.exp(v)
 	return x.is * (value - 1), x.gain * slope
+}
+
+// exp returns exp(v/nVt), continued linearly, and its derivative by the exponent.
+func (x *exponential) exp(v float64) (value, slope float64) {
+	return continued(v*x.inverse, x.limit, x.top)
 }
 
 // The lengths, in units of nVt, of the steps up and down that a junction may always take.
@@ -45,12 +62,12 @@ const (
 	freeDown = 0.5
 )
 
-// limit moves the evaluation of a junction from v, where Newton's method asks for it, to where the exponential carries the current that the
+// shorten moves the evaluation of a junction from v, where Newton's method asks for it, to where the exponential carries the current that the
 // junction linearised at the last voltage carries at v: v' = last + nVt ln(1 + (v - last)/nVt), as if the iteration were on the current. (Iterating on
 // whichever of current and voltage changes less: Calahan, Computer-Aided Network Design, 1972, ch. 4; from memory.) On the way up
 // it goes at least to the knee, below which no current is worth an iteration; on the way down it stops at rest first, since a
 // reversed junction has no conductance to tell where it came from.
-func (x *exponential) limit(v, last float64) (float64, bool) {
+func (x *exponential) shorten(v, last float64) (float64, bool) {
 	u := (v - last) * x.inverse
 	switch {
 	case u > freeUp && v > x.knee:

@@ -12,12 +12,12 @@ import (
 func TestLimitFindsTheVoltageOfACurrent(t *testing.T) {
 	x := newExponential(1e-15, 0.026)
 	// From rest, where the conductance is Is/nVt, a current source of 1 A asks for 26e12 V.
-	v, limited := x.limit(1/x.gain, 0)
+	v, limited := x.shorten(1/x.gain, 0)
 	assert.True(t, limited)
 	i, g := x.at(v)
 	assert.InDelta(t, 1, i, 1e-12)
 	// Down from there to 1 mA, as the tangent asks for.
-	v, limited = x.limit(v+(1e-3-i)/g, v)
+	v, limited = x.shorten(v+(1e-3-i)/g, v)
 	assert.True(t, limited)
 	i, _ = x.at(v)
 	assert.InDelta(t, 1e-3, i, 1e-12)
@@ -38,7 +38,7 @@ func TestLimitOfAVoltage(t *testing.T) {
 		{"reversed", -1, -50, -50},
 		{"from reversed", -50, 0.3, 0.3},
 	} {
-		v, limited := x.limit(c.v, c.last)
+		v, limited := x.shorten(c.v, c.last)
 		assert.Equal(t, c.want, v, c.name)
 		assert.Equal(t, c.want != c.v, limited, c.name)
 	}
@@ -52,7 +52,7 @@ func TestLimitLetsGo(t *testing.T) {
 		last := rapid.Float64Range(-50, 3).Draw(t, "last")
 		const most = 200 // 3 V are 600 of the smallest nVt, and every evaluation brings a few
 		for range most {
-			u, limited := x.limit(v, last)
+			u, limited := x.shorten(v, last)
 			require.False(t, math.IsNaN(u))
 			if !limited {
 				require.Equal(t, v, u)

@@ -56,9 +56,9 @@ func TestSeamOfTheDepletionCharge(t *testing.T) {
 }
 
 func TestSeamOfTheExponential(t *testing.T) {
-	for _, c := range []struct{ is, nVt float64 }{{6.7e-15, 0.02586}, {1e-30, 0.0331}, {0.9, 0.11}} {
+	for _, c := range []struct{ is, nVt float64 }{{6.7e-15, 0.02586}, {1e-30, 0.0331}, {1e-68, 0.0066}, {0.9, 0.11}} {
 		x := newExponential(c.is, c.nVt)
-		seam(t, fmt.Sprint("linear above ", c), exponentLimit*c.nVt, c.nVt, x.at)
+		seam(t, fmt.Sprint("linear above ", c), x.limit*c.nVt, c.nVt, x.at)
 		// Far below, the current is -is to the last bit, and its slope less than any number that could be added to it.
 		below, _ := x.at((leastExponent - 1e-9) * c.nVt)
 		above, slope := x.at((leastExponent + 1e-9) * c.nVt)
@@ -282,5 +282,25 @@ func TestLimitedEvaluationIsTheTangent(t *testing.T) {
 			}
 			assert.InDelta(t, wantQ, e.Q[i], 1e-12*sizeQ, "%s: q of %d", c.name, i)
 		}
+	}
+}
+
+// TestJunctionInTheCold: at -196 degC a junction of 10 fA has a saturation current of far less than 1e-60 A and still carries milliamperes by its law, at
+// exponents of more than 150.
+func TestJunctionInTheCold(t *testing.T) {
+	family := diodeFamily()
+	v := family.Defaults()
+	v[dIs] = 10e-15
+	made, err := newDiode(v, Place{Temperature: 77.15, Area: 1})
+	require.NoError(t, err)
+	d := made.(*diode).forward
+	require.Less(t, d.is, 1e-60)
+	for _, amps := range []float64{1e-12, 1e-3, 10} {
+		volts := d.nVt * (math.Log(amps) - math.Log(d.is))
+		require.Greater(t, volts/d.nVt, 110.0)
+		i, g := d.at(volts)
+		// An error of the voltage in its last bit is one of the exponent beside it.
+		require.InEpsilon(t, amps, i, 1e-13, "%g A", amps)
+		require.InEpsilon(t, amps/d.nVt, g, 1e-13, "%g A", amps)
 	}
 }
