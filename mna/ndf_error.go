@@ -12,8 +12,8 @@ const (
 	// kinkDefect is the error of a step beside the departure, for a slope that sets in at its start: a backward Euler step takes the whole of a charge
 	// of which half has come.
 	kinkDefect = 0.5
-	// kinkBend is that of the interpolation: the largest difference between a slope that sets in half-way and a polynomial through its end and the five points
-	// before.
+	// kinkBend is that of the interpolation: a slope that sets in half-way is off a polynomial through its end and the five points before by a quarter of the
+	// departure. The later it sets in, the larger the share, of a smaller departure.
 	kinkBend = 0.3
 )
 

@@ -103,6 +103,9 @@ func (m *ndf) recall() float64 {
 		steps = min(steps, 4/(m.alpha*m.distance[0])*before/(before-after))
 	}
 	fading := 1 / max(1, lasting*steps)
+	if math.IsNaN(fading) {
+		return m.memory
+	}
 	if m.fading == 0 {
 		m.fading = fading
 	}
